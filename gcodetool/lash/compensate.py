@@ -1,0 +1,232 @@
+"""The stream: blocks in, text out, so that a controller without lash compensation cuts the intended part.
+
+Each block is read once, in the modal state of the program as written.  A block that asks for no motion passes as it is; one
+that does goes to ``straight`` or ``curved``.  Between blocks only the knowledge of the axes, the modal state and the few
+lines held for the slot are kept, so memory does not grow with the program.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable
+
+from gcodetool.errors import Refusal
+from gcodetool.lash import curved, straight
+from gcodetool.lash.doubt import Doubt
+from gcodetool.lash.running import Running, Settings
+from gcodetool.lash.tally import Tally
+from gcodetool.machine import Machine
+from gcodetool.motion.command import Command, Kind, read_block
+from gcodetool.motion.dialect import M_CODES
+from gcodetool.program.blocks import Block
+from gcodetool.program.rewrite import join_words
+
+MARK = "lash taken up by gcodetool"
+_MARK_LINES = 50
+
+
+class Compensator:
+    """One rewriting; ``feed_block`` for each block in order, then ``finish``."""
+
+    def __init__(
+        self, machine: Machine, settings: Settings, write: Callable[[str], object], header: str = "", again: bool = False
+    ) -> None:
+        """``header`` is the text of the comment to write near the top; ``again`` allows a program that has ours already."""
+        self._count = 0
+        self._changed = 0
+        self._write_through = write
+        self.run = Running(machine, settings, write)
+        self._doubt = Doubt(self.run)
+        self._header = header
+        self._again = again
+        self._ended = False
+        self._begun = False
+        self._length: str | None = None
+
+    @property
+    def tally(self) -> Tally:
+        """Totals so far."""
+        return self.run.tally
+
+    def rewrite(self, blocks: Iterable[Block]) -> Tally:
+        """Take all blocks and finish; raises Refusal at the first block that cannot be rewritten."""
+        for block in blocks:
+            self.feed_block(block)
+        self.finish()
+        return self.tally
+
+    def finish(self) -> None:
+        """Write out what is still held."""
+        if not self._begun:
+            self._write_header("", "")
+        self.run.out.close()
+
+    def feed_block(self, block: Block) -> None:
+        """Take one block."""
+        run = self.run
+        run.tally.blocks += 1
+        if block.ending:
+            run.usual_ending = block.ending
+        if self._ended:
+            run.out.put(block.text + block.ending)
+            return
+        if block.number <= _MARK_LINES and MARK in block.text and not self._again:
+            reason = "this program has been rewritten for lash already"
+            raise Refusal(block.number, block.text.strip()[:60], reason, "Start from the original, or use --again")
+        self._rewrite_block(block)
+
+    def _rewrite_block(self, block: Block) -> None:
+        run = self.run
+        command = read_block(block, run.state)
+        if not command.shape.at:
+            self._without_words(command)
+            return
+        if not self._begun:
+            self._begun = True
+            if set(command.shape.at) - {"O", "N"}:
+                self._write_header(block.text, block.ending)
+            else:
+                self._begun = False
+        if command.deletable or self._doubt.fields:
+            self._doubtful(command)
+        else:
+            self._execute(command)
+
+    def _without_words(self, command: Command) -> None:
+        text = command.block.text
+        if text.lstrip().startswith("%"):
+            # the first tape mark opens the program, one after live code ends it
+            self._ended = self._begun
+        elif text.strip() and not self._begun:
+            self._begun = True
+            self._write_header(text, command.block.ending)
+        self.run.out.put(text + command.block.ending)
+
+    def _write_header(self, text: str, ending: str) -> None:
+        if self._header:
+            line = f"; {self._header}" if text.lstrip().startswith(";") else f"({self._header})"
+            self.run.out.put(line + (ending or self.run.usual_ending))
+            self._header = ""
+
+    # ---- one block ------------------------------------------------------------------------------------------------
+
+    def _doubtful(self, command: Command) -> None:
+        """A deletable block, or one after a deletable block that changed a mode."""
+        delete = self.run.settings.block_delete
+        if command.deletable and delete is True:
+            self.run.out.put(command.block.text + command.block.ending)
+            return
+        unsure = command.deletable and delete is None
+        self._doubt.check(command)
+        before = self._doubt.snapshot() if unsure else None
+        if unsure:
+            self.run.out.close()
+        self._execute(command)
+        if before is not None:
+            self.run.out.close()
+            self._doubt.merge(command, before)
+
+    def _execute(self, command: Command) -> None:
+        run = self.run
+        self._before_motion(command)
+        run.read_feed(command)
+        run.state = command.after
+        _MOVERS[command.kind](run, command)
+        if "F" in command.shape.at and command.kind in _KEEPS_FEED:
+            run.feed_written = run.feed
+        if command.kind is not Kind.NONE:
+            run.moved = True
+        if command.m:
+            self._after_motion(command)
+
+    def _before_motion(self, command: Command) -> None:
+        """Effects that come before the motion of a block (NISTIR 6556, table 8)."""
+        if command.m and "M6" in command.m:
+            self._tool_change()
+        if command.g.length:
+            self._length_change(command)
+        if command.after.offset != command.before.offset and (self.run.moved or command.before.offset):
+            self._reframe(self.run.axes)
+
+    def _after_motion(self, command: Command) -> None:
+        for word in command.m:
+            code = M_CODES.get(word)
+            if code is None:
+                self.tally.caution(f"{word} is not known and passes as it is: it must not move an axis", command.block.number)
+            elif code.group == "stop":
+                self.tally.caution(f"do not jog at {word}: it spoils what is known of the sides", command.block.number)
+            elif code.group == "end":
+                self.run.out.close()
+                self._ended = True
+            elif code.group == "tool":
+                self._tool_change()
+
+    def _tool_change(self) -> None:
+        self.run.out.close()
+        for axis in self.run.axes.values():
+            axis.lose_side(command_is_exact=False)
+
+    def _length_change(self, command: Command) -> None:
+        """Tool length: Z keeps its side, and its position too where the same length is stated again."""
+        new: str | None = command.g.length
+        if new == "G43":
+            new = f"G43 H{int(float(command.number('H')))}" if command.has("H") else None
+        elif new == "G43.1":
+            new = f"G43.1 Z{command.quanta('Z')}" if command.has("Z") else None
+        if new is None or (new != self._length and (self.run.moved or self._length)):
+            self._reframe("Z")
+        self._length = new
+
+    def _reframe(self, letters: Iterable[str]) -> None:
+        self.run.out.close()
+        for letter in letters:
+            self.run.axes[letter].unframe()
+
+
+# ---- blocks that are no cutting motion ----------------------------------------------------------------------------
+
+
+def _pass(run: Running, command: Command) -> None:
+    """No motion: as it is."""
+    run.out.put(command.block.text + command.block.ending)
+
+
+def _home(run: Running, command: Command) -> None:
+    """G28, G30: the via point is shifted where the side is known; then position and side are unknown."""
+    pieces = list(command.pieces)
+    goal = straight.targets(run, command)
+    for letter, target in goal.items():
+        axis = run.axes[letter]
+        known = axis.side and (axis.framed or command.after.distance == "G91")
+        if not axis.idle and known:
+            index = command.shape.at[letter]
+            pieces[index] = run.shifted_word(axis, pieces[index], command.after, axis.side_for(target))
+    run.out.close()
+    run.out.put(join_words(pieces) + command.block.ending)
+    for letter in goal or run.axes:
+        run.axes[letter].lose_side(command_is_exact=True)
+
+
+def _machine(run: Running, command: Command) -> None:
+    """G53: nothing is shifted; position and side are unknown after it."""
+    letters = [letter for letter, _ in command.shape.axes]
+    lashed = [letter for letter in letters if not run.axes[letter].idle]
+    if lashed and command.after.motion != "G0":
+        raise command.refusal(
+            "G53", f"a feed in machine coordinates, where the side of {lashed[0]} cannot be kept", "Use G0 with G53"
+        )
+    run.out.close()
+    run.out.put(command.block.text + command.block.ending)
+    for letter in letters:
+        run.axes[letter].lose_side(command_is_exact=True)
+
+
+_MOVERS: dict[Kind, Callable[[Running, Command], None]] = {
+    Kind.NONE: _pass,
+    Kind.RAPID: straight.rapid,
+    Kind.FEED: straight.feed,
+    Kind.LINE: straight.feed,
+    Kind.ARC: curved.arc,
+    Kind.HOME: _home,
+    Kind.MACHINE: _machine,
+}
+_KEEPS_FEED = frozenset({Kind.NONE, Kind.RAPID, Kind.HOME, Kind.MACHINE})
