@@ -74,11 +74,11 @@ def set_values(text: str, axis: str, changes: Mapping[str, Value | None]) -> str
     before = _tree(text)
     letter = _key_of(before, axis)
     end = "\r\n" if "\r\n" in text else "\n"
-    # Not splitlines: TOML ends a line at a line feed only.
-    lines = re.findall(r"[^\n]*\n|[^\n]+", text)
+    after = text
     for key, value in changes.items():
-        lines = _set_key(lines, letter, key, value, end)
-    after = "".join(lines)
+        # Not splitlines: TOML ends a line at a line feed only.
+        lines = re.findall(r"[^\n]*\n|[^\n]+", after)
+        after = "".join(_set_key(lines, letter, key, value, end))
     _prove(before, after, letter, changes)
     return after
 
@@ -231,14 +231,14 @@ def _place_for(lines: Sequence[str], table: tuple[int, int], entries: Iterable[t
 
 def _insert(lines: Sequence[str], where: int, text: str, end: str) -> list[str]:
     before = list(lines[:where])
-    if before and not before[-1].endswith(("\n", "\r")):
+    if before and not before[-1].endswith("\n"):
         before[-1] += end
     return [*before, text.replace("\n", end) + end, *lines[where:]]
 
 
 def _append_table(lines: Sequence[str], letter: str, text: str, end: str) -> list[str]:
-    body = _insert(lines, len(lines), f"[axes.{letter}]\n{text}", end)
-    return [*body[:-1], end + body[-1]] if len(body) > 1 and lines and lines[-1].strip() else body
+    apart = "\n" if lines and lines[-1].strip() else ""
+    return _insert(lines, len(lines), f"{apart}[axes.{letter}]\n{text}", end)
 
 
 def _exchange(old: Sequence[str], value: str, end: str) -> str:

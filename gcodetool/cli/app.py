@@ -61,6 +61,13 @@ def _told() -> Iterator[None]:
 class Verbs(TyperGroup):
     """All verbs; their errors end here."""
 
+    def parse_args(self, ctx: Any, args: list[str]) -> list[str]:
+        """Without a verb the help goes to standard error, whose reader is a person."""
+        if not args and not ctx.resilient_parsing:
+            typer.echo(ctx.get_help(), err=True)
+            raise typer.Exit(ExitCode.USAGE)
+        return list(super().parse_args(ctx, args))
+
     def make_context(self, *args: Any, **options: Any) -> Any:
         """Read the command line; help and version are printed in here."""
         with _told():
@@ -76,7 +83,6 @@ class Verbs(TyperGroup):
 
 app = typer.Typer(
     cls=Verbs,
-    no_args_is_help=True,
     rich_markup_mode=None,
     pretty_exceptions_enable=False,
     pretty_exceptions_show_locals=False,

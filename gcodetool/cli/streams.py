@@ -9,7 +9,6 @@ from __future__ import annotations
 
 import contextlib
 import os
-import shutil
 import stat
 import sys
 import tempfile
@@ -117,7 +116,7 @@ def open_source(path: str, name: str | None = None, *, live: bool = False) -> It
         try:
             binary = _standard_input() if path == "-" else stack.enter_context(open(path, "rb"))
             if not live and not binary.seekable():
-                binary = stack.enter_context(_spool(binary))
+                binary = stack.enter_context(_spool(binary, label))
             start = None if live else binary.tell()
             size = None if start is None else binary.seek(0, os.SEEK_END) - start
             if start is not None:
@@ -135,9 +134,15 @@ def _standard_input() -> IO[bytes]:
     return sys.stdin.buffer
 
 
-def _spool(binary: IO[bytes]) -> IO[bytes]:
+def _spool(binary: IO[bytes], label: str) -> IO[bytes]:
+    """Copy all chunks; a terminal ends with one Ctrl-D, since no read is tried after an empty one."""
     spool = tempfile.SpooledTemporaryFile(IN_MEMORY)  # noqa: SIM115 - the caller closes it
-    shutil.copyfileobj(binary, spool, CHUNK)
+    for chunk in _chunks(binary, label):
+        try:
+            spool.write(chunk)
+        except OSError as fault:
+            folder = tempfile.gettempdir()
+            raise WriteFailed(f"cannot keep {label} in {folder}: {fault.strerror or fault}") from fault
     spool.seek(0)
     return spool
 

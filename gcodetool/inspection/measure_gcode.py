@@ -20,7 +20,9 @@ WARNING = "gcodetool measure: run as it is, never compensate"
 def program_text(plan: ProgramPlan, seconds: float | None = None) -> str:
     """The program, line feed at each line's end.  ``seconds`` is its estimated time, for the head."""
     head = [plan.title, WARNING, *plan.head]
-    head.append("; ".join(f"{axis} moves from {low} to {high}" for axis, (low, high) in plan_bounds(plan).items()))
+    head.append(
+        "Program positions: " + "; ".join(_bounds(axis, *ends) for axis, ends in sorted(plan_bounds(plan).items()))
+    )
     if seconds is not None:
         head.append(f"Takes about {minutes(seconds)}")
     lines = [line for text in head for line in _comment(text)]
@@ -28,6 +30,10 @@ def program_text(plan: ProgramPlan, seconds: float | None = None) -> str:
     for step in plan.steps:
         lines += _step_lines(step)
     return "\n".join([*lines, "M2", ""])
+
+
+def _bounds(axis: str, low: Decimal, high: Decimal) -> str:
+    return f"{axis} {number(low)}" if low == high else f"{axis} from {number(low)} to {number(high)}"
 
 
 def minutes(seconds: float) -> str:
@@ -71,7 +77,7 @@ def number(value: Decimal, decimals: int = 3) -> str:
 
 def form_text(visits: Iterable[Visit], axis: str, column: str, facts: Mapping[str, str]) -> str:
     """The form (CSV) for the readings, rows in the order of the program; ``column`` such as ``indicator_mm``."""
-    lines = [f"# axis = {axis}", *(f"# {key} = {value}" for key, value in facts.items())]
+    lines = [f"# axis = {axis}", *(f"# {key} = {value}".rstrip() for key, value in facts.items())]
     lines += ["# One row per reading, in the order of the program. An empty cell is a missing reading."]
     unit = "deg" if axis in "ABC" else "mm"
     lines.append(f"run,direction,target_{unit},{column},note")

@@ -104,8 +104,8 @@ class Instrument:
 class ReadingSet:
     """All readings of one axis.  ``common_zero`` False: the indicator was set anew at each target.
 
-    ``missing`` counts the rows left empty; ``resolution`` is the last digit written, in mm or degrees; ``scale`` turns a
-    number of the form into mm or degrees.  ``facts`` are the ``# key = value`` lines of the form.
+    ``missing`` counts the rows left empty; ``resolution`` is the last digit written, in mm or degrees; ``scale``
+    turns a number of the form into mm or degrees.  ``facts`` are the ``# key = value`` lines of the form.
     """
 
     axis: str

@@ -9,13 +9,14 @@ from __future__ import annotations
 
 import math
 import random
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 from decimal import Decimal
 from itertools import pairwise
 
 from gcodetool.errors import SheetError
 from gcodetool.inspection.measure_records import Move, Note, Pause, ProgramPlan, Spindle, Step, Visit, Words
+from gcodetool.machine import Axis
 
 CYCLES = ("standard", "step", "quick")
 GRID = Decimal("0.001")
@@ -84,6 +85,49 @@ def choose_targets(low: Decimal, high: Decimal, count: int, period: Decimal, see
     raise SheetError(f"no {count} targets at unequal steps fit from {low} to {high}: ask for fewer, or give more room.")
 
 
+def program_range(
+    axis: Axis,
+    *,
+    low: Decimal | None = None,
+    high: Decimal | None = None,
+    centre: Decimal | None = None,
+    overrun: Decimal = Decimal(2),
+    margin: Decimal = Decimal(1),
+    zero: Decimal | None = None,
+) -> tuple[Decimal, Decimal, str]:
+    """Lowest and highest position the axis may be sent to, in program coordinates, and a line about the travel.
+
+    ``centre``: one overrun to either side of it.  Else ``low`` and ``high``; else the sheet's travel less the
+    ``margin`` at both ends.  ``zero`` is the machine position of program zero, by default the low end of the travel.
+    Raises SheetError where nothing is known of the travel, or the range does not fit into it.
+    """
+    if centre is not None:
+        low, high = centre - overrun, centre + overrun
+    elif low is None and high is None and axis.travel is not None:
+        zero = axis.travel[0] if zero is None else zero
+        low, high = axis.travel[0] - zero + margin, axis.travel[1] - zero - margin
+    if low is None or high is None:
+        raise SheetError(f"axis {axis.letter}: give --from and --to, or a sheet that states its travel.")
+    return low, high, _check_travel(axis, low, high, zero)
+
+
+def _check_travel(axis: Axis, low: Decimal, high: Decimal, zero: Decimal | None) -> str:
+    """What the operator must know about the limits; raises SheetError where the range cannot fit."""
+    if axis.travel is None:
+        return "The sheet states no travel: see that the way below fits the machine"
+    ends = f"Machine travel {axis.travel[0]} to {axis.travel[1]}"
+    if high - low > axis.travel[1] - axis.travel[0]:
+        raise SheetError(
+            f"axis {axis.letter}: from {low} to {high} is more than its travel {axis.travel[1] - axis.travel[0]}."
+        )
+    if zero is None:
+        return f"{ends}; set zero so that the way below fits"
+    if low + zero < axis.travel[0] or high + zero > axis.travel[1]:
+        place = f"{low + zero} to {high + zero} in machine coordinates"
+        raise SheetError(f"axis {axis.letter}: {place} leaves the travel {axis.travel[0]} to {axis.travel[1]}.")
+    return f"{ends}; set {axis.letter} zero at machine {zero}"
+
+
 def indicator_plan(request: IndicatorRequest) -> tuple[ProgramPlan, tuple[Visit, ...]]:
     """The program and its readings in the order they are taken.  Raises SheetError where the request cannot be met."""
     _check(request)
@@ -97,7 +141,18 @@ def indicator_plan(request: IndicatorRequest) -> tuple[ProgramPlan, tuple[Visit,
     steps.append(
         Move((("Z", request.safe_z),)) if request.axis != "Z" else Move((("Z", max(request.safe_z, request.high)),))
     )
-    return ProgramPlan(_title(request), _head(request, targets, runs), tuple(steps)), visits
+    return ProgramPlan(_title(request), _head(request, targets, runs), tuple(_moving(steps))), visits
+
+
+def _moving(steps: Iterable[Step]) -> Iterator[Step]:
+    """The steps without moves to where the machine already stands."""
+    place: dict[str, Decimal] = {}
+    for step in steps:
+        if isinstance(step, Move):
+            if all(place.get(letter) == value for letter, value in step.words):
+                continue
+            place.update(step.words)
+        yield step
 
 
 def _check(request: IndicatorRequest) -> None:
@@ -185,7 +240,7 @@ def _new_target(request: IndicatorRequest, visit: Visit, count: int, *, first: b
     yield Note(f"target {visit.index} of {count}: {request.axis} {visit.target}")
     yield _go(request, visit.target - request.overrun)
     yield _go(request, visit.target)
-    yield Pause(f"Set indicator: {request.axis} {visit.target}, tip pressed {request.overrun + request.lash} or more")
+    yield Pause(f"Set indicator: {request.axis} {visit.target}, tip half pressed in")
     for _ in range(request.warm_up):
         yield _go(request, visit.target + request.overrun)
         yield _go(request, visit.target - request.overrun)
@@ -206,12 +261,10 @@ def _title(request: IndicatorRequest) -> str:
 
 def _head(request: IndicatorRequest, targets: tuple[Decimal, ...], runs: int) -> tuple[str, ...]:
     """What the operator must know before the start button, one line each."""
-    axis, unit = request.axis, "degrees" if request.axis in "ABC" else "mm"
-    low, high = targets[0] - request.overrun, targets[-1] + request.overrun
+    unit = "degrees" if request.axis in "ABC" else "mm"
     lines = [
         "Run it as it is: a compensated copy would hide what is to be measured",
-        f"{len(targets)} targets, {runs} runs from each side, overrun {request.overrun} {unit}, feed {request.feed}",
-        f"Axis {axis} moves from {low} to {high} {unit} in program coordinates",
+        f"Targets: {len(targets)}, runs from each side: {runs}, overrun {request.overrun} {unit}, feed {request.feed}",
         request.limits,
         f"Clearance: Z at {request.safe_z} must clear work and clamps everywhere",
         _reach(request, unit),

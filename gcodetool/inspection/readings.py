@@ -70,6 +70,7 @@ def read_readings(text: str, *, axis: str | None = None, radius: float | None = 
     of the indicator from the centre of a rotary axis, and turns its mm into degrees.  ``# sign = -`` says that the
     dial falls when the axis moves towards plus.  Raises Refusal with line, words, reason and way out.
     """
+    text = text.removeprefix("\ufeff")
     facts, rows = _facts(text), list(_rows(text))
     if not rows:
         raise Refusal(1, "(empty)", "there is no reading", "Fill in the form that measure indicator writes")
@@ -104,7 +105,7 @@ _INSTRUMENT = ("resolution", "accuracy", "hysteresis", "misalignment")
 def _fact(readings: ReadingSet, key: str) -> float | None:
     text = readings.facts.get(key)
     try:
-        value = None if text is None else float(text)
+        value = None if text is None else float(text.replace(",", "."))
     except ValueError:
         value = -1.0
     if value is not None and not 0 <= value < math.inf:
@@ -116,18 +117,23 @@ def _facts(text: str) -> dict[str, str]:
     """The ``# key = value`` lines, keys in lower case; what is no such line is a plain comment."""
     facts: dict[str, str] = {}
     for raw in text.splitlines():
-        key, equals, value = raw.strip().lstrip("#").partition("=")
-        if raw.strip().startswith("#") and equals and key.strip().replace(" ", "").isalpha() and value.strip():
+        line = raw.strip(_FILLING)
+        key, equals, value = line.lstrip("#").partition("=")
+        if line.startswith("#") and equals and key.strip().replace(" ", "").isalpha() and value.strip():
             facts[key.strip().lower()] = value.strip()
     return facts
 
 
+# A spreadsheet that saves the form pads every line to the same number of columns, and may put quotes about it.
+_FILLING = ',;" \t'
+
+
 def _rows(text: str) -> Iterator[_Row]:
-    """Rows with their line numbers; comments and empty lines left out, a byte order mark too."""
+    """Rows with their line numbers; comments and empty lines left out."""
     separator = ""
-    for line, raw in enumerate(text.removeprefix("\ufeff").splitlines(), 1):
+    for line, raw in enumerate(text.splitlines(), 1):
         bare = raw.partition("#")[0].strip()
-        if not bare.strip(",; \t"):
+        if not bare.strip(_FILLING):
             continue
         separator = separator or next((mark for mark in (";", "\t", ",") if mark in bare), ",")
         cells = next(csv.reader([bare], delimiter=separator, skipinitialspace=True))

@@ -18,6 +18,8 @@ from itertools import combinations, pairwise
 from gcodetool.inspection.measure_records import Evaluation, Finding, LashEstimate, Reading, ReadingSet, Target
 
 OUTLIER, POSITION, NO_LASH, SWAPPED_ALL, SWAPPED_SOME, DRIFT, MISSING, FEW, EQUAL = range(601, 610)
+DOUBTFUL = (OUTLIER, SWAPPED_ALL, SWAPPED_SOME, DRIFT)
+"""Findings after which the readings should be looked at before their lash is used."""
 RISK = 0.05
 
 Cell = tuple[float, int]
@@ -63,17 +65,20 @@ def _pooled(cells: Iterable[Sequence[float]], resolution: float) -> _Scatter:
 
 def _outliers(readings: ReadingSet, resolution: float) -> list[Finding]:
     """Readings far from the others of their cell, by the externally studentised residual: scatter taken without it."""
-    cells = _cells(readings)
-    values = {key: [reading.deviation for reading in cell] for key, cell in cells.items()}
-    tested = sum(len(cell) for cell in cells.values() if len(cell) > 2)
-    found = []
-    for key, cell in cells.items():
-        for place, reading in enumerate(cell if len(cell) > 2 else ()):
-            others = values[key][:place] + values[key][place + 1 :]
-            scatter = _pooled([others, *(values[other] for other in values if other != key)], resolution)
-            off = reading.deviation - statistics.fmean(others)
-            limit = t_quantile(1 - RISK / tested / 2, scatter.freedom)
-            if abs(off) > limit * math.sqrt(scatter.variance * (1 + 1 / len(others))):
+    cells = [cell for cell in _cells(readings).values() if len(cell) > 1]
+    tested = sum(len(cell) for cell in cells if len(cell) > 2)
+    squares = math.fsum(_squares([reading.deviation for reading in cell]) for cell in cells)
+    freedom = sum(len(cell) - 1 for cell in cells) - 1
+    if not tested:
+        return []
+    limit, found = t_quantile(1 - RISK / tested / 2, freedom), []
+    for cell in (cell for cell in cells if len(cell) > 2):
+        total, share = math.fsum(reading.deviation for reading in cell), 1 / (len(cell) - 1)
+        for reading in cell:
+            off = reading.deviation - (total - reading.deviation) * share
+            # Without the reading the sum of squares is less by off^2 (n - 1) / n.
+            rest = max(0.0, squares - off**2 / (1 + share)) / freedom
+            if abs(off) > limit * math.sqrt(max(rest, resolution**2 / 12) * (1 + share)):
                 found.append(_outlier(reading, off, readings.unit))
     return found
 
@@ -200,7 +205,7 @@ def _drift(readings: ReadingSet, resolution: float) -> list[Finding]:
 def _missing(readings: ReadingSet, evaluation: Evaluation) -> list[Finding]:
     found = []
     if readings.missing:
-        found.append(Finding(MISSING, f"{readings.missing} rows of the form are empty; the rest is evaluated"))
+        found.append(Finding(MISSING, f"rows of the form left empty: {readings.missing}; the rest is evaluated"))
     single = [f"{target.position:g}" for target in evaluation.targets if target.reversal is None]
     if single:
         text = f"target {', '.join(single)}: read from one side only, so it says nothing about the lash"
@@ -214,7 +219,7 @@ def _few(evaluation: Evaluation) -> list[Finding]:
     if len(evaluation.targets) >= 5 and runs >= 5:
         return []
     text = (
-        f"{len(evaluation.targets)} targets with at least {runs} approaches from each side: ISO 230-2 asks for five of "
+        f"targets: {len(evaluation.targets)}, approaches from each side: {runs} or more; ISO 230-2 asks for five of "
         "each on an axis up to 2000 mm, so this is a quick look and no acceptance test"
     )
     return [Finding(FEW, text)]

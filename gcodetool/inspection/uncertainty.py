@@ -62,7 +62,7 @@ def lash_from_vernier(
 def lash_from_tongues(
     axis: str,
     *,
-    wide: Sequence[float],
+    wide: Sequence[float] = (),
     narrow: Sequence[float] = (),
     same: Sequence[float] = (),
     accuracy: float = 0.02,
@@ -84,11 +84,11 @@ def lash_from_tongues(
     scatter = [replace(row, u=row.u * share) for widths in (high, low) for row in _repeats(widths)]
     rows = [*scatter, _limit("caliper accuracy, both widths", accuracy * 2**0.5 * share)]
     rows.append(_limit("caliper last digit, both widths", resolution / 2 * 2**0.5 * share))
-    estimate = _coupon(axis, "mm", signed, rows, method, 2 * estimate_u(rows))
+    estimate = _coupon(axis, "mm", signed, rows, method, 2 * combined(rows))
     return replace(estimate, notes=(*estimate.notes, *_closure(wide, same, narrow, accuracy)))
 
 
-def estimate_u(rows: Iterable[Contribution]) -> float:
+def combined(rows: Iterable[Contribution]) -> float:
     """Combined standard uncertainty of independent rows (JCGM 100, 5.1.2)."""
     return math.sqrt(math.fsum(row.u**2 for row in rows))
 
@@ -105,7 +105,7 @@ def _coupon(axis: str, unit: str, signed: float, rows: list[Contribution], metho
 def _estimate(axis: str, unit: str, signed: float, rows: list[Contribution], method: str) -> LashEstimate:
     """Combined and expanded uncertainty; a lash no larger than that counts as none."""
     rows = [row for row in rows if row.u > 0]
-    u, freedom = estimate_u(rows), _freedom(rows)
+    u, freedom = combined(rows), _freedom(rows)
     factor, expanded = student_factor(freedom), COVERAGE * u
     shown = abs(signed) > expanded
     notes: tuple[str, ...] = ()
@@ -118,7 +118,7 @@ def _estimate(axis: str, unit: str, signed: float, rows: list[Contribution], met
 def _freedom(rows: Sequence[Contribution]) -> float:
     """Welch-Satterthwaite, JCGM 100 G.4.1: u^4 / sum(u_i^4 / nu_i); infinite where nothing scatters."""
     below = math.fsum(row.u**4 / row.freedom for row in rows)
-    return estimate_u(rows) ** 4 / below if below > 0 else math.inf
+    return combined(rows) ** 4 / below if below > 0 else math.inf
 
 
 def student_factor(freedom: float) -> float:

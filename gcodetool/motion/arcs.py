@@ -13,6 +13,7 @@ TURN = 2.0 * math.pi
 QUARTER = 0.5 * math.pi
 # two directions closer than this are one: far below any written digit, far above the rounding of a float
 ANGLE_NOISE = 1e-9
+NO_RADIUS = 1e-7
 Point = tuple[float, float]
 
 
@@ -65,12 +66,15 @@ class Arc:
 def from_centre(start: Point, end: Point, centre: Point, clockwise: bool, closed: bool, turns: int = 1) -> Arc:
     """Arc about a given centre; ``closed`` says that the written end is the written start (a full circle).
 
-    ``turns`` is the P word: 1 for at most one full circle, 2 for one turn more.  Raises ArcError at radius 0.
+    ``turns`` is the P word: 1 for at most one full circle, 2 for one turn more.  A full circle of radius 0, which posts do
+    write, is an arc without sweep; any other arc of radius 0 raises ArcError.
     """
     ux, uy = start[0] - centre[0], start[1] - centre[1]
     vx, vy = end[0] - centre[0], end[1] - centre[1]
     radius, end_radius = math.hypot(ux, uy), math.hypot(vx, vy)
-    if radius < 1e-7 or end_radius < 1e-7:
+    if closed and radius < NO_RADIUS:
+        return Arc(centre, 0.0, 0.0, 0.0, 0.0)
+    if radius < NO_RADIUS or end_radius < NO_RADIUS:
         raise ArcError("the arc has no radius")
     between = math.atan2(ux * vy - uy * vx, ux * vx + uy * vy)
     if clockwise:

@@ -10,7 +10,7 @@ from enum import Enum
 from typing import NamedTuple
 
 from gcodetool.errors import Refusal
-from gcodetool.motion.dialect import M_CODES, TAKES_AXIS_WORDS
+from gcodetool.motion.dialect import FRAME_WORDS, M_CODES, PROBES, TAKES_AXIS_WORDS
 from gcodetool.motion.modal import NO_G_WORDS, GWords, ModalState, code_word, g_words, is_cycle, step
 from gcodetool.program.blocks import Block
 from gcodetool.program.numbers import MM_DIGIT, exact, to_quanta
@@ -27,6 +27,9 @@ class Kind(Enum):
     ARC = "arc"
     HOME = "home"
     MACHINE = "machine coordinates"
+    CYCLE = "cycle"
+    PROBE = "probe"
+    FRAME = "change of frame"
 
 
 class Command(NamedTuple):
@@ -69,6 +72,7 @@ class Command(NamedTuple):
 
 _BY_MOTION = {"G0": Kind.RAPID, "G1": Kind.FEED, "": Kind.LINE}
 _ARC_LETTERS = frozenset("IJKR")
+_CYCLE_LETTERS = frozenset("RQPLIJK")
 
 
 def read_block(block: Block, state: ModalState) -> Command:
@@ -100,12 +104,18 @@ def _kind(shape: Shape, g: GWords, after: ModalState) -> Kind:
         return Kind.NONE
     if g.length == "G43.1":
         return Kind.NONE
+    if not g.here.isdisjoint(FRAME_WORDS):
+        return Kind.FRAME
     if after.motion in ("G2", "G3"):
         return Kind.ARC if shape.axes or not _ARC_LETTERS.isdisjoint(shape.at) else Kind.NONE
+    if is_cycle(after.motion):
+        return Kind.CYCLE if shape.axes or not _CYCLE_LETTERS.isdisjoint(shape.at) else Kind.NONE
     if not shape.axes:
         return Kind.NONE
     if "G53" in g.here:
         return Kind.MACHINE
+    if after.motion in PROBES:
+        return Kind.PROBE
     return _BY_MOTION.get(after.motion, Kind.NONE)
 
 
@@ -122,11 +132,14 @@ def _check(command: Command) -> None:
     if len(g.here & TAKES_AXIS_WORDS) > 1:
         both = " ".join(sorted(g.here & TAKES_AXIS_WORDS))
         raise command.refusal(both, "two words that both want the numbers of the block", "Put them on lines of their own")
+    if shape.axes and kind is Kind.FRAME and g.motion not in ("", "G0", "G1", "G80"):
+        both = f"{g.motion} {' '.join(sorted(g.here))}"
+        raise command.refusal(both, "two words that both want the numbers of the block", "Put them on lines of their own")
     if shape.axes and kind is Kind.NONE and not (g.here & TAKES_AXIS_WORDS) and g.length != "G43.1":
         letter = shape.axes[0][0]
         reason = f"an axis word with no motion in force ({command.after.motion or 'none'})"
         raise command.refusal(letter + command.number(letter).strip(), reason, "Write G0 or G1 on the line")
-    if kind not in (Kind.NONE, Kind.HOME) and command.after.units is None:
+    if kind not in (Kind.NONE, Kind.HOME) and command.after.units is None and command.shape.axes:
         reason = "motion before the program has said whether it is in mm or inches"
         raise command.refusal(_first_word(command), reason, "State it with --units mm or --units in, or in the machine sheet")
 
@@ -142,7 +155,7 @@ def _check_letters(command: Command) -> None:
         raise command.refusal(word, "a subprogram or a word that is not known", "Write the moves out in one program")
     if "E" in at:
         _check_exponent(command)
-    if kind in (Kind.RAPID, Kind.FEED, Kind.LINE, Kind.MACHINE) and not is_cycle(command.after.motion):
+    if kind in (Kind.RAPID, Kind.FEED, Kind.LINE, Kind.MACHINE, Kind.PROBE):
         for letter in "IJKR":
             if letter in at:
                 word = letter + command.number(letter).strip()

@@ -28,6 +28,9 @@ PLANE_AXES = {"G17": ("X", "Y", "Z"), "G18": ("Z", "X", "Y"), "G19": ("Y", "Z", 
 CENTRE_LETTER = {"X": "I", "Y": "J", "Z": "K"}
 CYCLES = ("G73", "G81", "G82", "G83", "G84", "G85", "G86", "G87", "G88", "G89")
 
+PROBES = ("G38.2", "G38.3", "G38.4", "G38.5")
+FRAME_WORDS = frozenset({"G92", "G92.1", "G92.2", "G92.3", "G10", "G52"})
+
 _OUT_CAM = "Let the CAM system write plain moves for it"
 _OUT_EXPAND = "Write the moves out, without subprograms, loops or variables"
 
@@ -57,7 +60,9 @@ def _codes() -> list[Code]:
         Code("G43", "length", "tool length: position of Z unknown after it; with Z it is a move"),
         Code("G43.1", "length", "tool length given in the block: Z is re-based where both lengths are known"),
         Code("G49", "length", "tool length off: position of Z unknown after it unless it was known to be off"),
+        Code("G93", "feed mode", "inverse time: the shares of a split block add up to its time"),
         Code("G94", "feed mode", "feed per minute"),
+        Code("G95", "feed mode", "feed per revolution: take-ups are made with G0"),
         Code("G98", "return", "cycles return to the level they began at"),
         Code("G99", "return", "cycles return to R"),
         Code("G40", "cutter", "cutter compensation off: passes"),
@@ -71,6 +76,18 @@ def _codes() -> list[Code]:
         Code("G69", "rotation", "rotation off: passes"),
         Code("G97", "spindle", "constant spindle speed: passes"),
     ]
+    table += [
+        Code("G92", "one line", "sets the position: each value gets the shift of its axis, so that zero stays at the tool"),
+        Code("G92.1", "one line", "cancels G92: position unknown unless what it cancels is known"),
+        Code("G92.2", "one line", "suspends G92: as G92.1"),
+        Code("G92.3", "one line", "restores G92: position unknown unless what it restores is known"),
+        Code("G10", "one line", "L2 sets an offset, L20 as G92, L1 a tool length; positions follow where both values are known"),
+        Code("G52", "one line", "local shift of the frame: positions follow"),
+    ]
+    kept = "kept as a cycle: X and Y as in a rapid, depth and R shifted so that the bottom is exact"
+    table += [Code(w, "motion", kept) for w in CYCLES]
+    probe = "probe: target unshifted; side known after it, position unknown until G92 or G10 L20"
+    table += [Code(w, "motion", probe) for w in PROBES]
     offsets = [f"G{n}" for n in range(54, 60)] + ["G59.1", "G59.2", "G59.3"]
     table += [Code(w, "offset", "work offset: positions unknown after a change of it") for w in offsets]
     return table + _refused()
@@ -90,19 +107,6 @@ def _refused() -> list[Code]:
         Code("G28.1", "one line", "refused", "it stores a home point that would be off by the lash", "Store it by hand"),
         Code("G30.1", "one line", "refused", "it stores a home point that would be off by the lash", "Store it by hand"),
     ]
-    later = {
-        "G92": "it sets the position",
-        "G92.1": "it changes the frame",
-        "G92.2": "it changes the frame",
-        "G92.3": "it changes the frame",
-        "G10": "it sets offsets",
-        "G52": "it shifts the frame",
-    }
-    table += [Code(w, "one line", "refused", f"{r} in a way that is not followed", _OUT_CAM) for w, r in later.items()]
-    table += [Code(w, "motion", "refused", "a cycle is not followed", _OUT_CAM) for w in CYCLES]
-    probes = ("G38.2", "G38.3", "G38.4", "G38.5")
-    table += [Code(w, "motion", "refused", "where a probe stops is not in the program", "Probe by hand") for w in probes]
-    table += [Code(w, "feed mode", "refused", "feeds in this mode are not rewritten", "Post with G94") for w in ("G93", "G95")]
     return table
 
 

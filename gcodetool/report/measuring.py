@@ -7,6 +7,8 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from dataclasses import replace
+from decimal import Decimal
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
@@ -63,18 +65,24 @@ def _target_row(target: Target, places: int) -> tuple[str, ...]:
 
 
 def figure_rows(evaluation: Evaluation) -> Rows:
-    """One row per figure of the axis, with the clause that defines it."""
+    """One row per figure of the axis, with the clause that defines it; what compares targets only where it can."""
     places = decimals_for(evaluation)
     return [
         (figure.symbol, figure.clause, number(figure.value, places, sign=figure.symbol == "B mean"), figure.name)
         for figure in evaluation.figures
+        if evaluation.common_zero or figure.symbol[0] in "BR"
     ]
 
 
 def budget_rows(lash: LashEstimate) -> Rows:
     """One row per contribution, and the combined uncertainty in the last."""
-    rows = [(row.name, row.kind, f"{row.u:.5f}", _freedom(row.freedom)) for row in lash.budget]
-    return [*rows, ("combined", "", f"{lash.uncertainty / 2:.5f}", _freedom(lash.freedom))]
+    rows = [(row.name, row.kind, _two_figures(row.u), _freedom(row.freedom)) for row in lash.budget]
+    return [*rows, ("combined", "", _two_figures(lash.uncertainty / 2), _freedom(lash.freedom))]
+
+
+def _two_figures(value: float) -> str:
+    """Two significant figures, as uncertainties are stated (JCGM 100, 7.2.6), never in powers of ten."""
+    return f"{Decimal(f'{value:.1e}'):f}"
 
 
 def _freedom(freedom: float) -> str:
@@ -99,19 +107,34 @@ def chart(evaluation: Evaluation) -> list[str]:
 
     One pair of lines per target; at most 79 columns.
     """
-    low, high = _span(evaluation)
+    targets = drawn_targets(evaluation)
+    low, high = _span(targets)
     lines = [f"{'target':>10}      {low:<+12.4f}{'deviation, ' + evaluation.unit:^{CHART - 24}}{high:>+12.4f}"]
-    for target in evaluation.targets:
+    for target in targets:
         up = _strip(target.mean_up, target.s_up, ">", low, high)
         down = _strip(target.mean_down, target.s_down, "<", low, high)
         lines += [f"{target.position:10.3f} up   {up}".rstrip(), f"{'':10} down {down}".rstrip()]
     return lines
 
 
-def _span(evaluation: Evaluation) -> tuple[float, float]:
+def drawn_targets(evaluation: Evaluation) -> tuple[Target, ...]:
+    """The targets as charts show them: about their own mean where the indicator was set anew at each."""
+    if evaluation.common_zero:
+        return evaluation.targets
+    return tuple(_about_its_mean(target) for target in evaluation.targets)
+
+
+def _about_its_mean(target: Target) -> Target:
+    known = [mean for mean in (target.mean_up, target.mean_down) if mean is not None]
+    centre = sum(known) / len(known) if known else 0.0
+    up, down = (None if mean is None else mean - centre for mean in (target.mean_up, target.mean_down))
+    return replace(target, mean_up=up, mean_down=down)
+
+
+def _span(targets: Sequence[Target]) -> tuple[float, float]:
     """Lowest and highest value to be drawn, zero among them; never empty."""
     edges = [0.0]
-    for target in evaluation.targets:
+    for target in targets:
         for mean, s in ((target.mean_up, target.s_up), (target.mean_down, target.s_down)):
             if mean is not None:
                 edges += [mean - 2 * (s or 0.0), mean + 2 * (s or 0.0)]

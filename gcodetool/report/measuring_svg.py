@@ -7,6 +7,8 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 from xml.sax.saxutils import escape
 
+from gcodetool.report.measuring import drawn_targets
+
 if TYPE_CHECKING:
     from gcodetool.inspection.measure_records import Evaluation, Target
 
@@ -35,8 +37,9 @@ class _Frame:
 
 def chart_svg(evaluation: Evaluation, title: str) -> str:
     """The drawing as SVG text; it needs no script, font or other file.  One target or none still draws."""
-    up = _series(evaluation.targets, lambda t: (t.mean_up, t.s_up))
-    down = _series(evaluation.targets, lambda t: (t.mean_down, t.s_down))
+    targets = drawn_targets(evaluation)
+    up = _series(targets, lambda t: (t.mean_up, t.s_up))
+    down = _series(targets, lambda t: (t.mean_down, t.s_down))
     frame = _frame([*up, *down])
     parts = [*_axes(frame, evaluation), *_band(frame, up, UP), *_band(frame, down, DOWN)]
     parts += [*_line(frame, up, UP, 1), *_line(frame, down, DOWN, -1), *_legend()]

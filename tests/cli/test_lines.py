@@ -5,6 +5,7 @@ from __future__ import annotations
 import io
 import re
 import time
+from itertools import pairwise
 
 import pytest
 from hypothesis import given
@@ -28,7 +29,7 @@ class Pieces(io.RawIOBase):
 
 def cut(data: bytes, places: list[int]) -> list[bytes]:
     edges = [0, *sorted(place % (len(data) + 1) for place in places), len(data)]
-    return [data[a:b] for a, b in zip(edges, edges[1:], strict=False)]
+    return [data[a:b] for a, b in pairwise(edges)]
 
 
 @given(PROGRAMS, st.lists(st.integers(min_value=0)))

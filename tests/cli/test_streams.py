@@ -79,9 +79,17 @@ def test_a_folder_is_no_program(drive, tmp_path: Path) -> None:
 def test_closed_standard_streams_are_told(driver, environment) -> None:
     for closed, code in (("<&-", 74), (">&-", 74)):
         line = f'"$0" "$1" copy - {closed}'
-        done = subprocess.run(["bash", "-c", line, *driver], input=b"G1\n", capture_output=True, env=environment, check=False)
+        shell = ["bash", "-c", line, *driver]
+        done = subprocess.run(shell, input=b"G1\n", capture_output=True, env=environment, check=False)
         assert done.returncode == code
         assert b"it is closed" in done.stderr
+
+
+def test_closed_standard_output_is_told_before_reading(driver, environment) -> None:
+    shell = ["bash", "-c", '"$0" "$1" copy - >&-', *driver]
+    with subprocess.Popen(shell, stdin=subprocess.PIPE, stderr=subprocess.PIPE, env=environment) as child:
+        # Standard input stays open and silent: the answer must not wait for it.
+        assert child.wait(timeout=60) == 74
 
 
 # A result appears whole or not at all.
@@ -301,7 +309,8 @@ def test_a_live_line_is_answered_while_the_sender_waits(driver, environment) -> 
 
 def peak_megabytes(driver, environment, lines: int, *options: str) -> float:
     feed = subprocess.Popen(["bash", "-c", f"yes 'G1 X1.2345 Y2.3456' | head -n {lines}"], stdout=subprocess.PIPE)
-    done = subprocess.run([*driver, "memory", *options], stdin=feed.stdout, env=environment, capture_output=True, check=True)
+    line = [*driver, "memory", *options]
+    done = subprocess.run(line, stdin=feed.stdout, env=environment, capture_output=True, check=True)
     feed.wait()
     count, kilobytes = done.stdout.split()
     assert int(count) == lines

@@ -26,6 +26,8 @@ def _arguments() -> argparse.Namespace:
     parser.add_argument("--seeds", type=int, default=8, help="random machines to try")
     parser.add_argument("--seed", type=int, default=0, help="first of them")
     parser.add_argument("--settle", type=float, default=0.5, help="overshoot allowed beyond the lash, mm")
+    parser.add_argument("--approach", type=float, default=0.0, help="overshoot allowed on every rapid, mm")
+    parser.add_argument("--allow-mismatch", action="store_true", help="let off the original's radius mismatch")
     parser.add_argument("--tolerance", type=float, default=TOLERANCE)
     return parser.parse_args()
 
@@ -53,6 +55,8 @@ def main() -> int:
             delete={"on": (True,), "off": (False,), "both": (False, True)}[args.block_delete],
             tolerance=args.tolerance,
             settle=args.settle,
+            approach=args.approach,
+            allow_mismatch=args.allow_mismatch,
         )
     except ControllerError as error:
         print("controller stops:", error)

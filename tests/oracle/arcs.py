@@ -1,7 +1,7 @@
 """Arcs as a strict controller reads them: centre from I/J/K or R, sweep, turns, radius mismatch, dense samples.
 
-Plane axes are in right-handed order (G17 X Y, G18 Z X, G19 Y Z), so counter-clockwise, seen from the positive end of the
-normal axis, is a growing angle (NISTIR 6556 3.5.3).  Lengths are in mm, angles in radians.
+Plane axes are in right-handed order (G17 X Y, G18 Z X, G19 Y Z), so counter-clockwise, seen from the positive end of
+the normal axis, is a growing angle (NISTIR 6556 3.5.3).  Lengths are in mm, angles in radians.
 """
 
 from __future__ import annotations
@@ -31,7 +31,7 @@ class ArcError(ValueError):
 
 @dataclass(frozen=True, slots=True)
 class Arc:
-    """Circle, spiral by its rounding mismatch, or helix; the sweep is signed, counter-clockwise positive, with turns."""
+    """Circle, spiral by its rounding mismatch, or helix; the sweep is positive counter-clockwise, with all turns."""
 
     axes: tuple[int, int]
     centre: tuple[float, float]
@@ -90,7 +90,7 @@ def arc_by_radius(
 
 
 def sample_arc(arc: Arc, start: Point, end: Point) -> Array:
-    """Points (n, axes) from ``start`` to ``end`` at fixed absolute angles, so that pieces of one arc share their samples.
+    """Points (n, axes) from ``start`` to ``end`` at fixed absolute angles, so that pieces of one arc share samples.
 
     The step divides a quarter turn (quadrant points are always among the samples), is at most half a degree, and keeps
     the chord within ``SAGITTA`` of the arc.  The radius runs linearly from start to end radius.

@@ -1,9 +1,10 @@
-"""Judge a rewritten program: the original on an ideal machine against the result on a machine with lash, curve by curve.
+"""Judge a rewritten program: original on an ideal machine against result on a machine with lash, curve by curve.
 
-Feeds must follow the intended curve in order (Frechet distance), holes must have their place and depth, rapids must end
-where they should, and what metal feels (feed, spindle, tool, coolant, times in G93, dwells, stops) must be the same.
-``units`` says which axes may be off by their lash, and when.  Of a settle on a feed that moves Z alone, the overshoot is
-allowed where it lies above, on the same vertical line, and never below the lower end of the original's motion.
+Feeds must follow the intended curve in order (Frechet distance), holes must have their place and depth, every rapid
+must end where it should, and what metal feels (feed, spindle, tool, coolant, times in G93, dwells, stops) must be the
+same.  ``units`` says which axes may be off by their lash, and when.  Of a settle on a feed that moves Z alone, the
+overshoot is allowed where it lies above, on the same vertical line, and never below the lower end of the original's
+motion.
 """
 
 from __future__ import annotations
@@ -14,9 +15,10 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from tests.oracle.arcs import Array
-from tests.oracle.controller import AXES, Event, Machine, run
+from tests.oracle.controller import run
 from tests.oracle.curves import frechet, length, stray
-from tests.oracle.lash import Bounds, Track, drive, play_bounds
+from tests.oracle.lash import Track, drive, play_bounds
+from tests.oracle.machine import AXES, Event, Machine
 from tests.oracle.units import NO_MOTION, Unit, Z, split
 
 TOLERANCE = 0.0006
@@ -40,7 +42,13 @@ class Finding:
 
 @dataclass(frozen=True, slots=True)
 class Report:
-    """Worst errors in mm (degrees): feed path, per axis on feed, rapid ends, strays beyond what is allowed, dips below."""
+    """Worst errors in mm (degrees).
+
+    ``feed``: distance of the feed paths, depth and place of holes, ends of settles; ``per_axis``: the same by axis;
+    ``rapid_end``: ends of rapids and probes; ``stray``: distance of the rapid paths, ``stray_excess`` what of it is not
+    allowed; ``dip``: how far a rapid or settle goes below the original's lowest point; ``mismatch_growth``: of start
+    and end radius of arcs.
+    """
 
     feed: Finding = Finding()
     per_axis: tuple[float, ...] = (0.0,) * 6
@@ -71,13 +79,15 @@ class Report:
 
 
 @dataclass(frozen=True, slots=True)
-class _Terms:
-    """What a comparison needs beside the two units: lash per axis, axes in use, tolerance, settle allowance."""
+class Terms:
+    """What a comparison needs beside the two paths: lash per axis and what is allowed; see ``deviation``."""
 
     lash: tuple[float, ...]
-    axes: tuple[int, ...]
-    tolerance: float
-    settle: float
+    tolerance: float = TOLERANCE
+    settle: float = 0.5
+    approach: float = 0.0
+    allow_mismatch: bool = False
+    axes: tuple[int, ...] = ()
 
 
 def deviation(
@@ -91,13 +101,18 @@ def deviation(
     known: str = "",
     tolerance: float = TOLERANCE,
     settle: float = 0.5,
+    approach: float = 0.0,
+    allow_mismatch: bool = False,
     disturb: int | None = None,
 ) -> Report:
     """Run ``original`` without lash and ``result`` with it on one machine, and compare.
 
     ``sides``: where in its play each axis starts, 0 minus flank to 1 plus flank.  ``known``: axes whose start side the
-    rewriter was told.  ``settle``: overshoot allowed beyond the lash, mm.  ``disturb``: seed of the push that every axis
-    gets at a tool change.  Raises ``ControllerError`` when either program is wrong on this machine.
+    rewriter was told.  ``settle``: overshoot allowed beyond the lash where an axis may be settled, mm; ``approach``:
+    the same on every rapid (one-sided approach).  ``allow_mismatch``: subtract the radius mismatch of the original's
+    arcs from the feed error (controllers differ on where they put it; here it grows evenly along the arc).
+    ``disturb``: seed of the push that every axis gets at a tool change.  Raises ``ControllerError`` when either program
+    is wrong on this machine.
     """
     bounds = play_bounds(lash, datum)
     unsure = frozenset(range(6)) - {AXES.index(a) for a in known.upper()}
@@ -106,7 +121,8 @@ def deviation(
     play = {i: pair for i, pair in enumerate(bounds) if pair != (0.0, 0.0)}
     ideal = drive(run(original, replace(machine, play={})), ((0.0, 0.0),) * 6, machine.start)
     actual = drive(run(result, replace(machine, play=play)), bounds, begin, rng)
-    return compare_tracks(ideal, actual, machine.start, begin, bounds, unsure, tolerance, settle)
+    terms = Terms(tuple(h - low for low, h in bounds), tolerance, settle, approach, allow_mismatch)
+    return compare_tracks(ideal, actual, machine.start, begin, terms, unsure)
 
 
 def compare_tracks(
@@ -114,16 +130,14 @@ def compare_tracks(
     actual: Track,
     ideal_start: Sequence[float],
     actual_start: Sequence[float],
-    bounds: Bounds,
+    terms: Terms,
     unsure: frozenset[int],
-    tolerance: float = TOLERANCE,
-    settle: float = 0.5,
 ) -> Report:
-    """Compare two true paths unit by unit."""
-    wanted = _substantial(split(ideal, ideal_start, unsure), tolerance)
-    got = _substantial(split(actual, actual_start, unsure), tolerance)
+    """Compare two true paths unit by unit; the axes in use are found here."""
+    wanted = _substantial(split(ideal, ideal_start, unsure), terms.tolerance)
+    got = _substantial(split(actual, actual_start, unsure), terms.tolerance)
     report = Report(faults=tuple(_event_faults(ideal, actual)))
-    terms = _Terms(tuple(high - low for low, high in bounds), _axes_in_use(wanted + got), tolerance, settle)
+    terms = replace(terms, axes=_axes_in_use(wanted + got))
     for p, q in zip(wanted, got, strict=False):
         if p.kind != q.kind:
             break
@@ -143,7 +157,7 @@ def _substantial(units: list[Unit], tolerance: float) -> list[Unit]:
             carry.append(unit)
             continue
         if carry:
-            unit.rapid = [s for c in carry for s in c.rapid] + unit.rapid
+            unit.rapid = [pair for c in carry for pair in c.rapid] + unit.rapid
             carry = []
         out.append(unit)
     return out
@@ -163,13 +177,13 @@ def _structure(wanted: list[Unit], got: list[Unit]) -> Report:
 def _axes_in_use(units: list[Unit]) -> tuple[int, ...]:
     used = np.zeros(6, dtype=bool)
     for unit in units:
-        for stroke in (*unit.rapid, *unit.strokes):
+        for stroke in (*(stroke for stroke, _ in unit.rapid), *unit.strokes):
             used |= (np.abs(stroke.points - stroke.points[0]) > NO_MOTION).any(axis=0)
     return tuple(np.flatnonzero(used).tolist()) or (0,)
 
 
 def _event_faults(ideal: Track, actual: Track) -> Iterator[str]:
-    lists = [[e for e in track if isinstance(e, Event)] for track in (ideal, actual)]
+    lists = [[e for e in track if isinstance(e, Event) and e.what != "frame"] for track in (ideal, actual)]
     for a, b in zip(*lists, strict=False):
         if (a.what, a.value) != (b.what, b.value):
             yield f"{a.what} {a.value:g} at line {a.line} became {b.what} {b.value:g} at line {b.line}"
@@ -181,7 +195,7 @@ def _event_faults(ideal: Track, actual: Track) -> Iterator[str]:
 # --- one pair of units ------------------------------------------------------------------------------------------
 
 
-def _compare(p: Unit, q: Unit, terms: _Terms) -> Report:
+def _compare(p: Unit, q: Unit, terms: Terms) -> Report:
     report = _compare_rapids(p, q, terms)
     if p.kind == "end":
         return report
@@ -195,51 +209,70 @@ def _mismatch(unit: Unit) -> float:
     return max((abs(s.motion.arc.mismatch) for s in unit.strokes if s.motion.arc), default=0.0)
 
 
-def _beyond(difference: Array, terms: _Terms, loose: frozenset[int]) -> Array:
+def _beyond(difference: Array, terms: Terms, loose: frozenset[int]) -> Array:
     """Absolute difference per axis in use, less the lash on loose axes."""
     slack = np.array([terms.lash[i] if i in loose else 0.0 for i in range(6)])
     over: Array = np.maximum(np.abs(difference) - slack, 0.0)
     return over
 
 
-def _compare_rapids(p: Unit, q: Unit, terms: _Terms) -> Report:
-    over = _beyond(q.start - p.start, terms, p.loose)
-    end = Finding(float(np.linalg.norm(over)), p.rapid_line(), q.rapid_line())
+def _compare_rapids(p: Unit, q: Unit, terms: Terms) -> Report:
+    over = _beyond(q.start - p.start, terms, p.doubt.loose)
+    lines = (p.rapid_line(), q.rapid_line())
+    report = Report(rapid_end=Finding(float(np.linalg.norm(over)), *lines))
     if not p.rapid and not q.rapid:
-        return Report(rapid_end=end)
+        return report
+    report = report.merge(_between_rapids(p, q, terms))
     axes = list(terms.axes)
     a, b = p.rapid_points(), q.rapid_points()
     far = stray(a[:, axes], b[:, axes])
-    wild = p.wild | p.loose
-    allowed = np.array([lash + (terms.settle + lash if i in wild else 0.0) for i, lash in enumerate(terms.lash)])
-    beyond = max(0.0, far - float(np.linalg.norm(allowed)))
-    below = float(min(a[:, Z].min(), p.start[Z]) - b[:, Z].min()) - (terms.lash[Z] if Z in wild else 0.0)
-    lines = (p.rapid_line(), q.rapid_line())
-    return Report(
-        rapid_end=end, stray=Finding(far, *lines), stray_excess=Finding(beyond, *lines), dip=Finding(below, *lines)
+    free = p.before.unsure | p.before.lost
+    margins = [max(terms.settle + terms.lash[i] if i in free else 0.0, terms.approach) for i in axes]
+    allowed = float(np.linalg.norm(np.array(terms.lash)[axes] + margins))
+    beyond = max(0.0, far - allowed)
+    slack = terms.lash[Z] if Z in p.before.loose else 0.0
+    below = float(min(a[:, Z].min(), p.start[Z]) - b[:, Z].min()) - slack
+    return report.merge(
+        Report(stray=Finding(far, *lines), stray_excess=Finding(beyond, *lines), dip=Finding(below, *lines))
     )
 
 
-def _compare_feed(p: Unit, q: Unit, terms: _Terms) -> Report:
+def _between_rapids(p: Unit, q: Unit, terms: Terms) -> Report:
+    """Every rapid of the original must end where some rapid of the result ends; the via point of G28 is let off."""
+    report = Report()
+    stops = np.array([stroke.points[-1] for stroke, _ in q.rapid] or [q.start])
+    for k, (stroke, loose) in enumerate(p.rapid[:-1]):
+        following = p.rapid[k + 1][0].motion
+        if following.machine_frame and following.line == stroke.motion.line:
+            continue
+        gaps = np.linalg.norm(_beyond(stops - stroke.points[-1], terms, loose), axis=1)
+        at = int(gaps.argmin())
+        line = q.rapid[at][0].motion.line if q.rapid else 0
+        report = report.merge(Report(rapid_end=Finding(float(gaps[at]), stroke.motion.line, line)))
+    return report
+
+
+def _compare_feed(p: Unit, q: Unit, terms: Terms) -> Report:
     a, b = p.points(), q.points()
-    still = {i for i in p.loose if np.abs(a[:, i] - a[0, i]).max() <= NO_MOTION}
-    soft = [i for i in p.loose - p.unsure if i not in still]
-    if soft and _beyond(b[0] - a[0], terms, frozenset(soft)).max() <= terms.tolerance:
-        b = np.vstack([a[0], b])
+    still = {i for i in p.doubt.loose if np.abs(a[:, i] - a[0, i]).max() <= NO_MOTION}
+    soft = p.doubt.soft - p.doubt.unsure - still
+    if soft and _beyond(b[0] - a[0], terms, soft).max() <= terms.tolerance:
+        b = np.vstack([a[0], b])  # the way down begins lower, in air, on the same line
     axes = [i for i in terms.axes if i not in still]
     match = frechet(a[:, axes], b[:, axes], terms.tolerance)
     per_axis = [0.0] * 6
     for i, value in zip(axes, match.per_axis, strict=True):
         per_axis[i] = value
-    off = float(_beyond(b[0] - a[0], terms, p.loose)[list(still)].max()) if still else 0.0
+    off = float(_beyond(b[0] - a[0], terms, p.doubt.loose)[list(still)].max()) if still else 0.0
     place = p.line_at(match.first), q.line_at(match.second)
-    feed = Finding(match.distance, *place).worse(Finding(off, *place))
+    error = match.distance - (_mismatch(p) if terms.allow_mismatch else 0.0)
+    feed = Finding(error, *place).worse(Finding(off, *place))
     # lengths along the path say nothing about the feed where the path itself is wrong
-    faults = tuple(_context_faults(p, q, terms)) if feed.value <= terms.tolerance else ()
+    faults = tuple(_context_faults(p, q, terms)) if match.distance <= terms.tolerance else ()
     return Report(feed=feed, per_axis=tuple(per_axis), faults=faults)
 
 
-def _context_faults(p: Unit, q: Unit, terms: _Terms) -> Iterator[str]:
+def _context_faults(p: Unit, q: Unit, terms: Terms) -> Iterator[str]:
     """Feed, spindle, tool and coolant must change at the same places along the path, and G93 times must add up."""
     runs = [_contexts(unit, terms) for unit in (p, q)]
     if any(context[0] == 0.0 and context[1] != 930 for context, _, _ in runs[0]):
@@ -255,7 +288,7 @@ def _context_faults(p: Unit, q: Unit, terms: _Terms) -> Iterator[str]:
         yield f"line {p.last_line()}: {times[0]:.6f} minutes in G93 became {times[1]:.6f}"
 
 
-def _contexts(unit: Unit, terms: _Terms) -> list[tuple[tuple[object, ...], float, int]]:
+def _contexts(unit: Unit, terms: Terms) -> list[tuple[tuple[object, ...], float, int]]:
     out: list[tuple[tuple[object, ...], float, int]] = []
     for stroke in unit.strokes:
         long = length(stroke.points)
@@ -269,7 +302,7 @@ def _contexts(unit: Unit, terms: _Terms) -> list[tuple[tuple[object, ...], float
     return out
 
 
-def _compare_hole(p: Unit, q: Unit, terms: _Terms) -> Report:
+def _compare_hole(p: Unit, q: Unit, terms: Terms) -> Report:
     """Place during feeds and depth exact; the drilling axis may come out by its lash; the rest is a rapid's stray."""
     normal = p.strokes[0].motion.normal
     named = frozenset().union(*(s.motion.named for s in p.strokes))
@@ -278,10 +311,10 @@ def _compare_hole(p: Unit, q: Unit, terms: _Terms) -> Report:
     cuts = [np.vstack([s.points for s in unit.strokes if s.motion.kind == "feed"]) for unit in (p, q)]
     if p.strokes[0].motion.code == 870:
         depth = max(depth, abs(float(cuts[0][:, normal].max() - cuts[1][:, normal].max())))
-    over = _beyond(cuts[1] - cuts[0][0], terms, p.loose - named)
+    over = _beyond(cuts[1] - cuts[0][0], terms, p.doubt.loose - named)
     over[:, normal] = 0.0
     aside = float(np.linalg.norm(over, axis=1).max())
-    end = _beyond(b[-1] - a[-1], terms, (p.loose - named) | {normal})
+    end = _beyond(b[-1] - a[-1], terms, (p.doubt.loose - named) | {normal})
     lines = (p.last_line(), q.last_line())
     per_axis = over.max(axis=0)
     per_axis[normal] = depth
@@ -300,12 +333,13 @@ def _compare_hole(p: Unit, q: Unit, terms: _Terms) -> Report:
     )
 
 
-def _compare_settle(p: Unit, q: Unit, terms: _Terms) -> Report:
+def _compare_settle(p: Unit, q: Unit, terms: Terms) -> Report:
     a, b = p.points(), q.points()
     others = [i for i in range(6) if i != Z]
     aside = float(np.abs(b[:, others] - b[0, others]).max())
-    end = _beyond(b[-1] - a[-1], terms, p.loose - {Z})
-    below = float(a[:, Z].min() - b[:, Z].min()) - (terms.lash[Z] if a[0, Z] <= a[:, Z].min() + NO_MOTION else 0.0)
+    end = _beyond(b[-1] - a[-1], terms, p.doubt.loose - {Z})
+    slack = terms.lash[Z] if Z in p.doubt.loose and a[0, Z] <= a[:, Z].min() + NO_MOTION else 0.0
+    below = float(a[:, Z].min() - b[:, Z].min()) - slack
     above = float(b[:, Z].max() - a[:, Z].max()) - 2 * terms.lash[Z] - terms.settle
     lines = (p.last_line(), q.last_line())
     worst = max(aside, float(np.linalg.norm(end)))
@@ -319,7 +353,7 @@ def _compare_settle(p: Unit, q: Unit, terms: _Terms) -> Report:
     )
 
 
-def _compare_probe(p: Unit, q: Unit, terms: _Terms) -> Report:
+def _compare_probe(p: Unit, q: Unit, terms: Terms) -> Report:
     named = p.strokes[-1].motion.named
-    end = _beyond(q.points()[-1] - p.points()[-1], terms, p.loose | named)
+    end = _beyond(q.points()[-1] - p.points()[-1], terms, p.doubt.loose | named)
     return Report(rapid_end=Finding(float(np.linalg.norm(end)), p.last_line(), q.last_line()))

@@ -14,7 +14,7 @@ import numpy as np
 from tests.oracle.arcs import Array
 
 Interval = tuple[float, float]
-_LEVELS = (2e-5, 1e-4, 2.5e-4)
+_LEVELS = (1e-9, 1e-6, 2e-5, 1e-4, 2.5e-4)
 _WINDOW = 8
 
 
@@ -43,19 +43,23 @@ def frechet(p: Array, q: Array, tolerance: float) -> Match:
     if reached is None:
         worst = _nearest(p, q)
         return Match(tolerance, tuple(np.minimum(worst.per_axis, tolerance)), worst.first, worst.second)
-    return Match(_measure(p, q, tolerance), _nearest(p, q).per_axis, *reached)
+    worst = _nearest(p, q)
+    return Match(_measure(p, q, tolerance, worst.distance), worst.per_axis, *reached)
 
 
-def _measure(p: Array, q: Array, low: float) -> float:
-    """The distance of curves that are known to be further apart than ``low``, to about a tenth."""
+def _measure(p: Array, q: Array, low: float, nearest: float) -> float:
+    """The distance of curves that are known to be further apart than ``low``, to a fiftieth or so.
+
+    ``nearest``: distance of some vertex of one curve from the other curve, which no walk can beat.
+    """
     ends = max(float(np.linalg.norm(p[0] - q[0])), float(np.linalg.norm(p[-1] - q[-1])))
-    low = max(low, ends * 0.999)
-    high = low * 1.5
+    low = max(low, ends * 0.999, nearest * 0.999)
+    high = low * 1.1
     while decide(_thin(p, high / 20), _thin(q, high / 20), high) is not None:
-        low, high = high, high * 2
+        low, high = high, high * 1.5
         if high > 1e4:
             return math.inf
-    while high > low * 1.1:
+    while high > low * 1.02:
         middle = math.sqrt(low * high)
         if decide(_thin(p, middle / 20), _thin(q, middle / 20), middle) is None:
             high = middle
@@ -78,16 +82,18 @@ def _thin(points: Array, gap: float) -> Array:
         if off[at] > gap:
             keep[low + at] = True
             spans += [(low, low + at), (low + at, high)]
-    return points[keep]
+    thinned: Array = points[keep]
+    return thinned
 
 
 def _from_chord(points: Array) -> Array:
-    """Distance of each point from the segment that joins the first and the last."""
+    """Distance of each point from the segment from first to last, or how far it has run back along that segment."""
     way = points[-1] - points[0]
-    square = max(float(way @ way), 1e-300)
-    share = np.clip((points - points[0]) @ way / square, 0.0, 1.0)
-    off: Array = np.linalg.norm(points[0] + share[:, None] * way - points, axis=1)
-    return off
+    size = max(float(np.linalg.norm(way)), 1e-150)
+    along = np.clip((points - points[0]) @ way / size, 0.0, size)
+    off = np.linalg.norm(points[0] + along[:, None] * (way / size) - points, axis=1)
+    off[1:-1] = np.maximum(off, np.maximum.accumulate(along) - along)[1:-1]
+    return np.asarray(off, dtype=np.float64)
 
 
 def _walk(p: Array, q: Array, eps: float) -> Match | None:
@@ -119,15 +125,15 @@ def _walk(p: Array, q: Array, eps: float) -> Match | None:
 def _rejoin(p: Array, q: Array, i: int, j: int, eps: float) -> tuple[int, int] | None:
     steps = [(a, s - a) for s in range(1, 2 * _WINDOW) for a in range(s + 1) if a <= _WINDOW and s - a <= _WINDOW]
     for a, b in steps:
-        if i + a < len(p) and j + b < len(q) and np.linalg.norm(p[i + a] - q[j + b]) <= eps:
-            if decide(p[i : i + a + 1], q[j : j + b + 1], eps) is None:
-                return i + a, j + b
+        near = i + a < len(p) and j + b < len(q) and np.linalg.norm(p[i + a] - q[j + b]) <= eps
+        if near and decide(p[i : i + a + 1], q[j : j + b + 1], eps) is None:
+            return i + a, j + b
     return None
 
 
 def _nearest(p: Array, q: Array) -> Match:
     """Largest distance of a vertex of either curve from the other curve, blind to order (for reports only)."""
-    step = max(1, len(p) // 2000), max(1, len(q) // 2000)
+    step = max(1, len(p) // 500), max(1, len(q) // 500)
     there, at_q = _to_curve(q[:: step[1]], p)
     back, at_p = _to_curve(p[:: step[0]], q)
     per_axis = np.maximum(there.max(axis=0), back.max(axis=0))
@@ -196,7 +202,8 @@ def decide(p: Array, q: Array, eps: float) -> tuple[int, int] | None:
     best = (0, 0)
     for i in range(n):
         right, top_end = _sweep_column(ps, qs, i, left, floor, eps)
-        best = max(best, (i, max(right, default=0)))
+        if right:
+            best = (i, max(right))
         if i == n - 1:
             done = (m - 1 in right and right[m - 1][1] >= 1.0) or top_end
             return None if done and math.dist(ps[-1], qs[-1]) <= eps else best

@@ -3,7 +3,7 @@
 One axis with lash B (Krasnosel'skii & Pokrovskii 1989): command less actual stays in [low, high], which is [0, B] when
 zero was set on the minus side and [-B, 0] when it was set on the plus side; between samples of a monotone command
 ``a' = min(max(a, c - low'), c - high')`` is exact.  Lines are taken from end to end, with the points where an axis
-engages added so that the polyline is the true path; arcs are taken sample by sample.
+engages added so that the polyline is the true path; arcs are taken sample by sample, with such points added too.
 """
 
 from __future__ import annotations
@@ -14,10 +14,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from tests.oracle.arcs import Array, sample_arc
-from tests.oracle.controller import AXES, Event, Item, Motion
+from tests.oracle.machine import AXES, Event, Item, Motion, Point
 
 Bounds = tuple[tuple[float, float], ...]
-Point = tuple[float, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -84,11 +83,30 @@ def drive(
 def _stroke(motion: Motion, bounds: Bounds, here: Point) -> Array:
     if motion.arc is None:
         return _line(motion, bounds, here)
-    samples = sample_arc(motion.arc, motion.start, motion.end)
+    commands = sample_arc(motion.arc, motion.start, motion.end)
+    if all(low == high for low, high in bounds) and here == motion.start:
+        return commands
+    commands = _with_kinks(commands, _follow(commands, bounds, here))
+    return _follow(commands, bounds, here)
+
+
+def _follow(commands: Array, bounds: Bounds, here: Point) -> Array:
+    """True points at command samples."""
+    out = np.empty_like(commands)
     for axis, (low, high) in enumerate(bounds):
-        if low != high or here[axis] != motion.start[axis]:
-            samples[:, axis] = [here[axis], *play(samples[1:, axis].tolist(), here[axis], low, high)]
-    return samples
+        out[:, axis] = [here[axis], *play(commands[1:, axis].tolist(), here[axis], low, high)]
+    return out
+
+
+def _with_kinks(commands: Array, actual: Array) -> Array:
+    """Add the command at which an axis takes up its play inside a step, so that no corner of the path is cut."""
+    asked, made = np.abs(np.diff(commands, axis=0)), np.abs(np.diff(actual, axis=0))
+    steps, axes = np.nonzero((made > 0) & (made < asked - 1e-9))
+    share = 1 - made[steps, axes] / asked[steps, axes]
+    order = np.lexsort((share, steps))
+    steps, share = steps[order], share[order, None]
+    extra = commands[steps] + share * (commands[steps + 1] - commands[steps])
+    return np.insert(commands, steps + 1, extra, axis=0)
 
 
 def _line(motion: Motion, bounds: Bounds, here: Point) -> Array:

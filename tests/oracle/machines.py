@@ -3,20 +3,22 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
+from dataclasses import replace
 
 import numpy as np
 
 from tests.oracle.compare import TOLERANCE, Report, deviation
-from tests.oracle.controller import Machine
+from tests.oracle.controller import run
+from tests.oracle.machine import Machine, Motion, Point
 
 
-def _point(rng: np.random.Generator, span: float) -> tuple[float, ...]:
+def _point(rng: np.random.Generator, span: float) -> Point:
     return tuple(np.round(rng.uniform(-span, span, 6), 4).tolist())
 
 
 def random_machine(rng: np.random.Generator, *, inch: bool = False, delete_blocks: bool = False) -> Machine:
-    """Start, offsets, tool lengths, homes, probe height, tool changer and G98 habit drawn at random, in mm and degrees."""
-    changer = {int(axis): float(np.round(rng.uniform(-80, 80), 4)) for axis in range(3) if rng.random() < 0.7}
+    """Start, offsets, tool lengths, homes, tool changer and G98 habit drawn at random, in mm and degrees."""
+    changer = {axis: float(np.round(rng.uniform(-80, 80), 4)) for axis in range(3) if rng.random() < 0.7}
     return Machine(
         start=_point(rng, 60),
         work=tuple(_point(rng, 200) for _ in range(9)),
@@ -25,10 +27,22 @@ def random_machine(rng: np.random.Generator, *, inch: bool = False, delete_block
         home30=_point(rng, 250),
         inch=inch,
         delete_blocks=delete_blocks,
-        probes={2: float(np.round(rng.uniform(-40, -30), 4))} if rng.random() < 0.5 else {},
         tool_change=changer if rng.random() < 0.5 else {},
         level_at_entry=bool(rng.random() < 0.5),
     )
+
+
+def with_probe(machine: Machine, program: bytes, rng: np.random.Generator) -> Machine:
+    """The same machine with something for the first probe move of ``program`` to touch, one time in four nothing."""
+    for item in run(program, machine):
+        if isinstance(item, Motion) and item.kind == "probe":
+            if rng.random() < 0.25:
+                return machine
+            share = rng.uniform(0.2, 0.9)
+            axis = max(item.named)
+            height = item.start[axis] + share * (item.end[axis] - item.start[axis])
+            return replace(machine, probes={axis: float(np.round(height, 4))})
+    return machine
 
 
 def random_sides(rng: np.random.Generator) -> tuple[float, ...]:
@@ -47,15 +61,17 @@ def worst_of(
     delete: tuple[bool, ...] = (False, True),
     tolerance: float = TOLERANCE,
     settle: float = 0.5,
+    approach: float = 0.0,
+    allow_mismatch: bool = False,
 ) -> Report:
     """Worst report over random machines; block delete is tried each way in ``delete`` if the program has any."""
     report = Report()
     for seed in seeds:
         for switch in delete if b"/" in original else delete[:1]:
             rng = np.random.default_rng(seed)
-            machine = random_machine(rng, inch=inch, delete_blocks=switch)
+            machine = with_probe(random_machine(rng, inch=inch, delete_blocks=switch), original, rng)
             report = report.merge(deviation(
-                original, result, lash, machine, datum=datum, sides=random_sides(rng),
-                tolerance=tolerance, settle=settle, disturb=seed,
+                original, result, lash, machine, datum=datum, sides=random_sides(rng), tolerance=tolerance,
+                settle=settle, approach=approach, allow_mismatch=allow_mismatch, disturb=seed,
             ))  # fmt: skip
     return report

@@ -1,8 +1,8 @@
 """Program text to words, for the oracle's own controller; knows letters and numbers, no meaning.
 
-Rules: NISTIR 6556 section 3.3 and appendix E (spaces and tabs mean nothing outside comments, letters in either case, one
-sign and one point in a number), widened by what real programs hold: ``;`` comments, ``O`` and ``:`` heads, a line check
-``*nn`` (exclusive or of the bytes before the star; common practice, no source), any of CR, LF, CRLF as line end.
+Rules: NISTIR 6556 section 3.3 and appendix E (spaces and tabs mean nothing outside comments, letters in either case,
+one sign and one point in a number), widened by what real programs hold: ``;`` comments, ``O`` and ``:`` heads, a line
+check ``*nn`` (exclusive or of the bytes before the star; common practice, no source), any of CR, LF, CRLF as line end.
 Whatever else is found is an error, never skipped.
 """
 
@@ -80,7 +80,7 @@ def _live_text(text: str, line: int) -> str:
 def _block(text: str, raw: bytes, line: int) -> Block | None:
     check = _CHECK.search(text)
     if check:
-        if int(check[1]) != reduce(lambda a, b: a ^ b, raw[: raw.rindex(b"*")], 0):
+        if int(check[1]) != reduce(lambda a, b: a ^ b, raw[: raw.rindex(b"*" + check[1].encode())], 0):
             raise ControllerError(line, f"line check {check[0]} is wrong")
         text = text[: check.start()]
     text = text.lstrip("|")
