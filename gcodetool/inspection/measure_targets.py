@@ -135,7 +135,7 @@ def indicator_plan(request: IndicatorRequest) -> tuple[ProgramPlan, tuple[Visit,
     length = request.high - request.low
     runs = request.runs or default_runs(length)
     visits = tuple(_visits(request, targets, runs))
-    steps: list[Step] = [*_start(request, targets[0])]
+    steps: list[Step] = [*_start(request, targets)]
     body = _standard if request.cycle == "standard" else _stepwise
     steps += body(request, targets, visits)
     steps.append(
@@ -188,11 +188,12 @@ def _visits(request: IndicatorRequest, targets: tuple[Decimal, ...], runs: int) 
         yield from (Visit(index, target, run, -1) for index, target in reversed(numbered))
 
 
-def _start(request: IndicatorRequest, first: Decimal) -> Iterator[Step]:
-    """Spindle off, Z up, the other axes and the start of the axis by rapids, then a stop to set up the indicator."""
-    begin = first - request.overrun
+def _start(request: IndicatorRequest, targets: tuple[Decimal, ...]) -> Iterator[Step]:
+    """Spindle off, a stop before anything moves, Z up, then the other axes and the start of the axis by rapids."""
+    begin, end = targets[0] - request.overrun, targets[-1] + request.overrun
     others = dict(request.others)
     yield Spindle()
+    yield Pause(f"{request.axis} goes from {begin} to {end}, Z first to {request.safe_z}: way clear?")
     yield Move((("Z", max(request.safe_z, request.high) if request.axis == "Z" else request.safe_z),))
     words = {"X": Decimal(0), "Y": Decimal(0), **others}
     if request.axis != "Z":

@@ -26,6 +26,7 @@ from gcodetool.program.numbers import QUANTA_PER_MM, decimal_to_quanta
 
 TOLERANCE_MM = 0.0006
 _RUNS_KEPT = 64
+_HOLE_END = 0.01
 Blocks = Callable[[], Iterable[Block]]
 
 
@@ -133,6 +134,8 @@ class _Sink:
 
     def add(self, piece: Piece, end: Vector) -> Run | None:
         """Take one piece; the run that it ends, if it ends one.  ``end`` is where the tool stood before it."""
+        if piece.hole:
+            piece = _bottom(piece)
         if is_still(piece) or (piece.rapid and _hardly_moves(piece)):
             return None
         done = None
@@ -153,6 +156,21 @@ class _Sink:
     def last(self, end: Vector) -> Run | None:
         """The run at the end of the program."""
         return Run(self.rapid, self.pieces, end, self.line) if self.rapid is not None else None
+
+
+def _bottom(piece: Piece) -> Piece:
+    """Of a feed inside a cycle the last hundredth that cuts: above it the tool is in the hole that it has made.
+
+    The return in air may stray by the lash, so a hole may be begun that much lower; its bottom and its place are exact.
+    """
+    way = [b - a for a, b in zip(piece.start, piece.end, strict=True)]
+    length = max(map(abs, way))
+    if length <= _HOLE_END:
+        return piece
+    step = tuple([w / length * _HOLE_END for w in way])
+    if piece.hole == "out":
+        return piece._replace(end=tuple([a + s for a, s in zip(piece.start, step, strict=True)]))
+    return piece._replace(start=tuple([b - s for b, s in zip(piece.end, step, strict=True)]))
 
 
 def _hardly_moves(piece: Piece) -> bool:

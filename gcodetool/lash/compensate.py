@@ -10,16 +10,20 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable
 
 from gcodetool.errors import Refusal
-from gcodetool.lash import curved, straight
+from gcodetool.lash import curved, drilling, straight
 from gcodetool.lash.doubt import Doubt
+from gcodetool.lash.known_frames import KnownFrames
 from gcodetool.lash.running import Running, Settings
 from gcodetool.lash.tally import Tally
 from gcodetool.machine import Machine
 from gcodetool.motion.command import Command, Kind, read_block
+from gcodetool.motion.cycles import Sticky
 from gcodetool.motion.dialect import M_CODES
+from gcodetool.motion.modal import is_cycle
 from gcodetool.program.blocks import Block
 from gcodetool.program.rewrite import join_words
 
+Mover = Callable[[Running, Command], None]
 MARK = "lash taken up by gcodetool"
 _MARK_LINES = 50
 
@@ -31,16 +35,18 @@ class Compensator:
         self, machine: Machine, settings: Settings, write: Callable[[str], object], header: str = "", again: bool = False
     ) -> None:
         """``header`` is the text of the comment to write near the top; ``again`` allows a program that has ours already."""
-        self._count = 0
-        self._changed = 0
-        self._write_through = write
         self.run = Running(machine, settings, write)
         self._doubt = Doubt(self.run)
+        self._frames = KnownFrames(self.run)
+        self._drilling = drilling.Drilling(Sticky())
+        self._movers = _MOVERS | {
+            Kind.FRAME: self._frames.frame,
+            Kind.CYCLE: lambda run, command: drilling.cycle(run, self._drilling, command),
+        }
         self._header = header
         self._again = again
         self._ended = False
         self._begun = False
-        self._length: str | None = None
 
     @property
     def tally(self) -> Tally:
@@ -130,7 +136,9 @@ class Compensator:
         self._before_motion(command)
         run.read_feed(command)
         run.state = command.after
-        _MOVERS[command.kind](run, command)
+        if command.before.motion != command.after.motion and not is_cycle(command.after.motion):
+            self._drilling.sticky.drop()
+        self._movers[command.kind](run, command)
         if "F" in command.shape.at and command.kind in _KEEPS_FEED:
             run.feed_written = run.feed
         if command.kind is not Kind.NONE:
@@ -143,9 +151,9 @@ class Compensator:
         if command.m and "M6" in command.m:
             self._tool_change()
         if command.g.length:
-            self._length_change(command)
-        if command.after.offset != command.before.offset and (self.run.moved or command.before.offset):
-            self._reframe(self.run.axes)
+            self._frames.change_length(command)
+        if command.after.offset != command.before.offset:
+            self._frames.change_offset(command)
 
     def _after_motion(self, command: Command) -> None:
         for word in command.m:
@@ -164,22 +172,6 @@ class Compensator:
         self.run.out.close()
         for axis in self.run.axes.values():
             axis.lose_side(command_is_exact=False)
-
-    def _length_change(self, command: Command) -> None:
-        """Tool length: Z keeps its side, and its position too where the same length is stated again."""
-        new: str | None = command.g.length
-        if new == "G43":
-            new = f"G43 H{int(float(command.number('H')))}" if command.has("H") else None
-        elif new == "G43.1":
-            new = f"G43.1 Z{command.quanta('Z')}" if command.has("Z") else None
-        if new is None or (new != self._length and (self.run.moved or self._length)):
-            self._reframe("Z")
-        self._length = new
-
-    def _reframe(self, letters: Iterable[str]) -> None:
-        self.run.out.close()
-        for letter in letters:
-            self.run.axes[letter].unframe()
 
 
 # ---- blocks that are no cutting motion ----------------------------------------------------------------------------
@@ -220,7 +212,7 @@ def _machine(run: Running, command: Command) -> None:
         run.axes[letter].lose_side(command_is_exact=True)
 
 
-_MOVERS: dict[Kind, Callable[[Running, Command], None]] = {
+_MOVERS: dict[Kind, Mover] = {
     Kind.NONE: _pass,
     Kind.RAPID: straight.rapid,
     Kind.FEED: straight.feed,
@@ -228,5 +220,6 @@ _MOVERS: dict[Kind, Callable[[Running, Command], None]] = {
     Kind.ARC: curved.arc,
     Kind.HOME: _home,
     Kind.MACHINE: _machine,
+    Kind.PROBE: drilling.probe,
 }
-_KEEPS_FEED = frozenset({Kind.NONE, Kind.RAPID, Kind.HOME, Kind.MACHINE})
+_KEEPS_FEED = frozenset({Kind.NONE, Kind.RAPID, Kind.HOME, Kind.MACHINE, Kind.FRAME})

@@ -21,6 +21,7 @@ from gcodetool.program.numbers import (
     MM_DIGIT,
     QUANTA_PER_MM,
     decimals_of,
+    exact,
     round_to_grid,
     shifted,
     write_quanta,
@@ -98,14 +99,16 @@ def _write(task: _Task) -> None:
     pieces = cut.pieces
     if len(pieces) > 1 and command.has("R"):
         pieces = cut_long(pieces, task.move.arc.sweep)
-    texts = _take_up(task, pieces[0], first=True)
+    texts = run.reseat(command)
+    texts += _take_up(task, pieces[0], first=True, in_air=not texts)
     last: list[Word] = []
     for index, piece in enumerate(pieces):
         if index:
             texts += _take_up(task, piece, first=False)
         end = _split_point(task, piece.end) if piece.end < 1.0 else task.goal if len(pieces) == 1 else task.full_goal
         if index == 0:
-            block, last = _first(task, piece, end, len(pieces) > 1, bool(texts))
+            respell = bool(texts) and run.motion_written != command.after.motion
+            block, last = _first(task, piece, end, len(pieces) > 1, respell)
             texts.append(block)
         else:
             texts.append(_next(task, piece, end, last if piece.end == 1.0 else []))
@@ -115,13 +118,13 @@ def _write(task: _Task) -> None:
     run.put(command, texts)
 
 
-def _take_up(task: _Task, piece: Piece, first: bool) -> list[str]:
+def _take_up(task: _Task, piece: Piece, first: bool, in_air: bool = False) -> list[str]:
     axes = task.run.axes
     turning = {letter: side for letter, side in piece.sides.items() if side != axes[letter].side}
     if not turning:
         return []
     state = task.command.before if first else task.command.after
-    made = task.run.take_up(task.command, turning, state, in_air=first)
+    made = task.run.take_up(task.command, turning, state, in_air=in_air)
     for letter, side in turning.items():
         axes[letter].side = side
     return made
@@ -157,7 +160,7 @@ def _finish(task: _Task, cut: Cut) -> None:
         task.run.axes[letter].extreme = extreme
 
 
-def _first(task: _Task, piece: Piece, end: Mapping[str, int], split: bool, after_line: bool) -> tuple[str, list[Word]]:
+def _first(task: _Task, piece: Piece, end: Mapping[str, int], split: bool, respell: bool) -> tuple[str, list[Word]]:
     """The block itself, up to the end of the first piece, and the M words it must hand on to the last one."""
     run, command = task.run, task.command
     pieces = list(command.pieces)
@@ -179,9 +182,11 @@ def _first(task: _Task, piece: Piece, end: Mapping[str, int], split: bool, after
     for word in added:
         pieces = with_word(pieces, word, look)
     pieces = run.with_feed(command, pieces)
-    if after_line and not command.g.motion:
+    if respell and not command.g.motion:
         pieces = run.with_motion(command, pieces)
     last: list[Word] = []
+    if split and command.after.feed_mode == "G93" and command.has("F"):
+        pieces[_index(pieces, "F")] = _share_of_time(command, piece)
     if split:
         pieces, last = split_last_words(command, _split_block(task, pieces, piece))
     return join_words(pieces), last
@@ -243,10 +248,18 @@ def _next(task: _Task, piece: Piece, end: Mapping[str, int], last: list[Word]) -
     centre = _centre_words(task, piece)
     words += [(letter, _end_number(task, run.axes[letter], target, piece)) for letter, target in end.items()]
     words += centre
-    if run.feed is not None and run.feed_written not in (None, run.feed):
+    if command.after.feed_mode == "G93" and command.has("F"):
+        words.append(("F", _share_of_time(command, piece)))
+    elif run.feed is not None and run.feed_written not in (None, run.feed) and command.after.feed_mode == "G94":
         words.append(("F", run.feed))
         run.feed_written = run.feed
     return new_line([*words, *last], run.look(command))
+
+
+def _share_of_time(command: Command, piece: Piece) -> str:
+    """F of a piece in inverse time (1/minutes): its share of the sweep is its share of the time (NISTIR 6556, 3.5.19)."""
+    value, decimals = exact(command.number("F"))
+    return f"{value / 10**decimals / (piece.end - piece.start):.6f}"
 
 
 def _centre_words(task: _Task, piece: Piece) -> list[Word]:

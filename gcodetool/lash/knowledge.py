@@ -26,12 +26,13 @@ class Start:
 class AxisKnowledge:
     """One axis; mutable, because it is the running state of the stream.
 
+    ``adrift`` is true where the shift in force does not belong to the side (after a drilling cycle has come back in air).
     ``shift`` is the command minus the wanted position as last written, None where it is not known.  ``extreme`` is the
     farthest position on the present side (see ``play.advance``).  ``decimals`` is the most that a word of this axis has had.
     """
 
     __slots__ = (
-        "datum", "decimals", "extreme", "framed", "inch_lash", "letter", "margin", "mm_lash", "position", "ripple",
+        "adrift", "datum", "decimals", "extreme", "framed", "inch_lash", "letter", "margin", "mm_lash", "position", "ripple",
         "rotary", "shift", "side",
     )  # fmt: skip
 
@@ -50,6 +51,7 @@ class AxisKnowledge:
         self.framed = start.position is not None
         self.side = start.side
         self.decimals = 0
+        self.adrift = False
         self.shift: int | None = self.shift_on(start.side, False) if start.side else 0
 
     @property
@@ -73,16 +75,23 @@ class AxisKnowledge:
         """Take a move to ``target`` into account, with the side that ``side_for`` gave."""
         self.side, self.extreme = advance(self.side, self.extreme, target, self.ripple)
         self.position = target
+        self.adrift = False
 
     def land(self, target: int, side: int, framed: bool) -> None:
         """Take note that the axis now stands at ``target``, seated on ``side``."""
         self.position = self.extreme = target
         self.side = side
         self.framed = framed
+        self.adrift = False
 
     def unframe(self) -> None:
         """The frame has changed: the side and the shift stay known, the position does not."""
         self.framed = False
+
+    def rebase(self, by: int) -> None:
+        """The origin has moved by a known amount: the axis stands where it was, under another number."""
+        self.position += by
+        self.extreme += by
 
     def lose_side(self, command_is_exact: bool) -> None:
         """Position and side are unknown from here on.
@@ -92,6 +101,7 @@ class AxisKnowledge:
         """
         self.framed = False
         self.side = 0
+        self.adrift = False
         if command_is_exact or self.shift == 0:
             self.shift = 0
         else:

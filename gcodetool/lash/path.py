@@ -27,7 +27,7 @@ class Piece(NamedTuple):
     """A part of a path: a straight line, or an arc in the plane of ``axes`` with all other axes linear in its angle.
 
     ``start`` and ``end`` have six numbers, X Y Z A B C.  ``loose`` is true where an axis that moves started on a side that
-    nothing in the program had made known.
+    nothing in the program had made known; ``hole`` is that of the move.
     """
 
     rapid: bool
@@ -37,6 +37,7 @@ class Piece(NamedTuple):
     arc: Arc | None
     axes: tuple[int, int]
     loose: bool = False
+    hole: str = ""
 
     def point(self, share: float) -> Vector:
         """The point at a share (0 to 1) of the piece."""
@@ -48,7 +49,7 @@ class Piece(NamedTuple):
 
 def intended(move: Move) -> Piece:
     """The path of a move on a machine without lash."""
-    return Piece(move.rapid, move.line, _mm(move.start), _mm(move.end), move.arc, move.axes)
+    return Piece(move.rapid, move.line, _mm(move.start), _mm(move.end), move.arc, move.axes, hole=move.hole)
 
 
 def _mm(position: Sequence[int]) -> Vector:
@@ -138,7 +139,7 @@ class Follower:
             yield Piece(
                 move.rapid, move.line,
                 self._show(now, _between(begin, end, low)), self._show(then, _between(begin, end, high)),
-                None, (0, 1),
+                None, (0, 1), hole=move.hole,
             )  # fmt: skip
             now = then
         self.actual = now

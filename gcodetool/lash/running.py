@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from decimal import Decimal
 
 from gcodetool.lash.knowledge import AxisKnowledge, Start, knowledge
@@ -22,7 +22,16 @@ from gcodetool.program.numbers import (
     exact,
     shifted,
 )
-from gcodetool.program.rewrite import Look, Word, lines, look_of, new_line, with_leading_word, with_word
+from gcodetool.program.rewrite import (
+    Look,
+    Word,
+    lines,
+    look_of,
+    new_line,
+    with_check_sum,
+    with_leading_word,
+    with_word,
+)
 
 DEEPEST_DECIMALS = 9
 MM_PER_INCH = Decimal("25.4")
@@ -32,10 +41,12 @@ MM_PER_INCH = Decimal("25.4")
 class Settings:
     """How to rewrite, beside the machine: what holds at the start, how far to look ahead, how to take deletable blocks.
 
-    ``block_delete`` is None where the switch is not known, True where deletable blocks are skipped, False where they run.
+    ``offsets`` and ``lengths`` are what the operator states of work offsets and tool lengths, quanta.  ``block_delete`` is None where the switch is not known, True where deletable blocks are skipped, False where they run.
     """
 
-    start: Mapping[str, Start]
+    start: Mapping[str, Start] = field(default_factory=dict)
+    offsets: Mapping[str, Mapping[str, int]] = field(default_factory=dict)
+    lengths: Mapping[int, int] = field(default_factory=dict)
     look_ahead: int = 32
     block_delete: bool | None = None
 
@@ -55,6 +66,7 @@ class Running:
         self.tally = Tally()
         self.feed: str | None = None
         self.feed_written: str | None = None
+        self.motion_written = ""
         self.usual_ending = "\n"
         self.usual_blank = " "
         self.moved = False
@@ -73,8 +85,13 @@ class Running:
 
     def put(self, command: Command, texts: Sequence[str]) -> None:
         """Send the lines that stand for a block."""
+        block = command.block
         touched = [letter for letter, _ in command.shape.axes]
-        self.out.put(lines(texts, command.block.ending, self.usual_ending), touched)
+        if len(texts) > 1 or texts[0] != block.text:
+            self.tally.changed += 1
+            if "*" in command.pieces[-1]:
+                texts = [with_check_sum(text) for text in texts]
+        self.out.put(lines(texts, block.ending, self.usual_ending), touched)
 
     def shifted_word(self, axis: AxisKnowledge, text: str, state: ModalState, side: int, beyond: int = 0) -> str:
         """The number of a target word on a side, ``beyond`` quanta past it; notes the shift then in force."""
@@ -88,6 +105,14 @@ class Running:
             return text
         new, added = shifted(text, add, INCH_DIGIT if inch else MM_DIGIT, self.least(inch))
         axis.shift = added if absolute else (axis.shift or 0) + added
+        return new if added else text
+
+    def plus(self, axis: AxisKnowledge, text: str, state: ModalState, add: int) -> str:
+        """A number with ``add`` quanta more; as it is where that is nothing."""
+        if not add:
+            return text
+        inch = self.is_inch(axis, state)
+        new, added = shifted(text, add, INCH_DIGIT if inch else MM_DIGIT, self.least(inch))
         return new if added else text
 
     def number_at(self, axis: AxisKnowledge, state: ModalState, side: int, like: str, beyond: int = 0) -> str:
@@ -131,6 +156,16 @@ class Running:
             return []
         return [self._take_up_here(command, here, state)]
 
+    def reseat(self, command: Command) -> list[str]:
+        """The line, if one is needed, that brings axes left adrift by a cycle to where they should be."""
+        adrift = {letter: self.axes[letter].side for letter in self.lashed if self.axes[letter].adrift}
+        if not adrift:
+            return []
+        made = [self._take_up_here(command, adrift, command.before)]
+        for letter in adrift:
+            self.axes[letter].adrift = False
+        return made
+
     def _slot_can_say(self, axis: AxisKnowledge) -> bool:
         return self.out.slot is not None and (axis.framed or self.out.slot.state.distance == "G91")
 
@@ -149,11 +184,13 @@ class Running:
         if state.units is None and command.after.units:
             words.append(("G", command.after.units[1:]))
             state = replace(state, units=command.after.units)
+        by_rapid = command.after.feed_mode != "G94" or command.before.feed_mode != "G94"
         if command.after.motion:
-            words.append(("G", "1"))
+            words.append(("G", "0" if by_rapid else "1"))
+            self.motion_written = "G0" if by_rapid else "G1"
         axes = [self.axes[letter] for letter in sides]
         words += [(a.letter, self.number_at(a, state, sides[a.letter], self._like(command, a))) for a in axes]
-        feed = self._take_up_feed(command, state)
+        feed = None if by_rapid else self._take_up_feed(command, state)
         if feed is not None:
             words.append(("F", feed))
             self.feed_written = feed
@@ -193,7 +230,7 @@ class Running:
         if "F" in command.shape.at:
             self.feed_written = self.feed
             return list(pieces)
-        if self.feed is None or self.feed_written in (None, self.feed):
+        if self.feed is None or self.feed_written in (None, self.feed) or command.after.feed_mode != "G94":
             return list(pieces)
         self.feed_written = self.feed
         return with_word(pieces, ("F", self.feed), self.look(command))

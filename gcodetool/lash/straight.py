@@ -60,7 +60,7 @@ def _plan(run: Running, command: Command, goal: Mapping[str, int]) -> Plan:
         axis = run.axes[letter]
         if axis.idle:
             continue
-        side = _side_after(run, command, axis, target)
+        side = arrival_side(run, command, axis, target)
         if side:
             sides[letter] = side
         else:
@@ -74,19 +74,23 @@ def settling_side(axis: AxisKnowledge) -> int:
     return -1 if axis.letter == "Z" else axis.datum
 
 
-def _side_after(run: Running, command: Command, axis: AxisKnowledge, target: int) -> int:
-    """The side a rapid to ``target`` surely ends on; 0 where the axis must be settled."""
+def arrival_side(run: Running, command: Command, axis: AxisKnowledge, target: int) -> int:
+    """The side on which a rapid to ``target`` surely arrives; 0 where the axis must be settled."""
     absolute = command.after.distance == "G90"
     if absolute and not axis.framed:
         return 0
-    if axis.side:
+    if axis.side and not axis.adrift:
         return axis.side_for(target)
     if axis.shift is None:
         if absolute:
             return 0
         raise _unsaid(command, axis)
     inch = run.is_inch(axis, command.after)
+    if axis.adrift and target == axis.position:
+        return axis.side
     side = (target > axis.position) - (target < axis.position)
+    if axis.adrift and side == axis.side:
+        return side
     travel = target + axis.shift_on(side, inch) - axis.position - axis.shift if side else 0
     return side if travel * side >= axis.lash(inch) and side else 0
 
@@ -152,17 +156,22 @@ def feed(run: Running, command: Command) -> None:
     if unknown:
         _feed_from_unknown(run, command, goal, unknown)
         return
+    texts = run.reseat(command)
     sides = {letter: run.axes[letter].side_for(goal[letter]) for letter in goal if not run.axes[letter].idle}
     turning = {letter: side for letter, side in sides.items() if side != run.axes[letter].side}
-    texts = run.take_up(command, turning, command.before, in_air=True) if turning else []
+    if turning:
+        texts += run.take_up(command, turning, command.before, in_air=not texts)
     pieces = _shift_words(run, command, sides) if sides else list(command.pieces)
     _arrive(run, command, goal, sides)
     finish_feed(run, command, texts, pieces)
 
 
 def finish_feed(run: Running, command: Command, texts: list[str], pieces: list[str]) -> None:
-    """Send a feed block with the lines before it, and the program's F again where those have changed it."""
-    run.put(command, [*texts, join_words(run.with_feed(command, pieces))])
+    """Send a feed block with the lines before it; say again what those have changed."""
+    pieces = run.with_feed(command, pieces)
+    if texts and not command.g.motion and run.motion_written != command.after.motion and command.after.motion:
+        pieces = run.with_motion(command, pieces)
+    run.put(command, [*texts, join_words(pieces)])
 
 
 def _feed_known(run: Running, command: Command, letter: str) -> bool:

@@ -1,7 +1,8 @@
 """Drilling and boring cycles: their sticky words, and the moves each stands for (NISTIR 6556, 3.5.16).
 
 The normal axis of the plane is called Z here and the plane axes X and Y, whatever the plane.  Lengths in quanta.  Moves are
-given in the program frame; a move names only the axes that it is about.
+given in the program frame; a move names only the axes that it is about.  A step is ``rapid``, ``in`` (a feed that cuts) or
+``out`` (a feed that comes back).
 """
 
 from __future__ import annotations
@@ -134,7 +135,7 @@ def _repeats(command: Command) -> int:
 
 
 def cycle_steps(cycle: Cycle, start: Mapping[str, int]) -> Iterator[Step]:
-    """The moves of a cycle block from ``start``: ``(rapid or feed, targets)`` in order."""
+    """The moves of a cycle block from ``start``: ``(rapid, in or out; targets)`` in order."""
     first, second, normal = cycle.plane
     place = {first: start[first], second: start[second]}
     if start[normal] < cycle.level:
@@ -153,8 +154,8 @@ def cycle_steps(cycle: Cycle, start: Mapping[str, int]) -> Iterator[Step]:
 def _hole(cycle: Cycle, normal: str) -> Iterator[Step]:
     if cycle.peck:
         yield from _pecks(cycle, normal)
-    yield "feed", {normal: cycle.bottom}
-    yield ("feed" if cycle.word in ("G84", "G85", "G89") else "rapid"), {normal: cycle.clear}
+    yield "in", {normal: cycle.bottom}
+    yield ("out" if cycle.word in ("G84", "G85", "G89") else "rapid"), {normal: cycle.clear}
 
 
 def _pecks(cycle: Cycle, normal: str) -> Iterator[Step]:
@@ -163,7 +164,7 @@ def _pecks(cycle: Cycle, normal: str) -> Iterator[Step]:
     for _ in range(MOST_PECKS):
         if depth <= cycle.bottom:
             return
-        yield "feed", {normal: depth}
+        yield "in", {normal: depth}
         if cycle.word == "G83":
             yield "rapid", {normal: cycle.clear}
         yield "rapid", {normal: min(depth + PECK_CLEARANCE, cycle.level)}
@@ -176,8 +177,8 @@ def _back_bore(cycle: Cycle, place: Mapping[str, int]) -> Iterator[Step]:
     yield "rapid", dict(aside)
     yield "rapid", {normal: cycle.bottom}
     yield "rapid", dict(place)
-    yield "feed", {normal: cycle.top}
-    yield "feed", {normal: cycle.bottom}
+    yield "in", {normal: cycle.top}
+    yield "in", {normal: cycle.bottom}
     yield "rapid", dict(aside)
     yield "rapid", {normal: cycle.clear}
     yield "rapid", dict(place)

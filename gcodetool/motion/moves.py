@@ -34,7 +34,7 @@ class Move(NamedTuple):
     """One motion: ``rapid`` or feed, source line, both ends, the arc in machine coordinates (mm) for an arc.
 
     ``axes`` are the indexes of the first and second plane axis of the arc.  ``unplaced`` are the letters whose start is not
-    known from the program, so that their direction is not either.
+    known from the program, so that their direction is not either.  ``hole`` is "in" or "out" for the feeds of a cycle.
     """
 
     rapid: bool
@@ -45,6 +45,7 @@ class Move(NamedTuple):
     axes: tuple[int, int]
     context: Context
     unplaced: str = ""
+    hole: str = ""
 
 
 class Event(NamedTuple):

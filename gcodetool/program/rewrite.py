@@ -6,20 +6,23 @@ slash.  Their line end is the one of that block.
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterable, Sequence
 from typing import NamedTuple
 
-from gcodetool.program.words import is_deletable
+from gcodetool.program.words import check_sum, is_deletable
 
+_CHECK = re.compile(r"\*[ \t]*\d+[ \t]*$")
 Word = tuple[str, str]
 
 
 class Look(NamedTuple):
-    """How a block is written: what stands between words, lower case or not, deletable or not."""
+    """How a block is written: what stands between words, lower case or not, deletable or not, with a line check or not."""
 
     between: str = " "
     lower: bool = False
     slash: bool = False
+    check: bool = False
 
 
 def look_of(pieces: Sequence[str], lower: bool, otherwise: str = " ") -> Look:
@@ -29,14 +32,21 @@ def look_of(pieces: Sequence[str], lower: bool, otherwise: str = " ") -> Look:
         between = " " if any(gap[:1] in (" ", "\t") for gap in inner) else ""
     else:
         between = otherwise
-    return Look(between, lower, is_deletable(list(pieces)))
+    return Look(between, lower, is_deletable(list(pieces)), "*" in pieces[-1])
 
 
 def new_line(words: Iterable[Word], look: Look) -> str:
     """The text of a new block from letters and numbers."""
     text = look.between.join(letter + number for letter, number in words)
     text = text.lower() if look.lower else text
-    return f"/{text}" if look.slash else text
+    text = f"/{text}" if look.slash else text
+    return with_check_sum(text) if look.check else text
+
+
+def with_check_sum(text: str) -> str:
+    """The text with its line check ``*nn`` made anew: exclusive or of all characters before it (common practice, no source)."""
+    body = _CHECK.sub("", text)
+    return f"{body}*{check_sum(body)}"
 
 
 def with_word(pieces: Sequence[str], word: Word, look: Look) -> list[str]:

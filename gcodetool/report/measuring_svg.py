@@ -77,12 +77,13 @@ def _axes(frame: _Frame, evaluation: Evaluation) -> list[str]:
         parts.append(f'<text x="{x0 - 8}" y="{y + 4:.1f}" text-anchor="end">{value:.4g}</text>')
     for target in evaluation.targets:
         x = frame.x(target.position)
-        parts.append(f'<text x="{x:.1f}" y="{y0 + 18}" text-anchor="middle">{target.position:g}</text>')
+        parts.append(f'<text x="{x:.1f}" y="{y0 + 18}" text-anchor="middle">{round(target.position, 2):g}</text>')
     unit = evaluation.unit
+    measured = "deviation" if evaluation.common_zero else "deviation from each target's mean"
     middle = (y0 + y1) / 2
     parts.append(f'<text x="{(x0 + x1) / 2}" y="{HEIGHT - 12}" text-anchor="middle">target, {unit}</text>')
     turned = f'transform="rotate(-90 18 {middle})"'
-    parts.append(f'<text x="18" y="{middle}" text-anchor="middle" {turned}>deviation, {unit}</text>')
+    parts.append(f'<text x="18" y="{middle}" text-anchor="middle" {turned}>{measured}, {unit}</text>')
     return parts
 
 

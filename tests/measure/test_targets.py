@@ -136,7 +136,7 @@ def test_the_wait_is_a_stop_or_a_dwell() -> None:
         measure_gcode.program_text(indicator_plan(IndicatorRequest("X", D(0), D(50), dwell=dwell))[0])
         for dwell in (None, D("3.5"))
     )
-    assert stops.count("\nM0") == 1 + 50
+    assert stops.count("\nM0") == 2 + 50
     assert waits.count("\nG4 P3.5") == 50
     assert "where P is ms" in waits
     assert "where P is ms" not in stops

@@ -36,6 +36,8 @@ def run(program: bytes, machine: Machine) -> list[Item]:
     controller = _Controller(machine)
     items: list[Item] = []
     for block in read_blocks(program):
+        if block.deletable:
+            items.append(Event("frame", block.line))
         if block.deletable and machine.delete_blocks:
             continue
         try:

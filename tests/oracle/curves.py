@@ -44,7 +44,8 @@ def frechet(p: Array, q: Array, tolerance: float) -> Match:
         worst = _nearest(p, q)
         return Match(tolerance, tuple(np.minimum(worst.per_axis, tolerance)), worst.first, worst.second)
     worst = _nearest(p, q)
-    return Match(_measure(p, q, tolerance, worst.distance), worst.per_axis, *reached)
+    # the segment after the last that could be reached ends two vertices on
+    return Match(_measure(p, q, tolerance, worst.distance), worst.per_axis, reached[0] + 2, reached[1] + 2)
 
 
 def _measure(p: Array, q: Array, low: float, nearest: float) -> float:

@@ -186,7 +186,8 @@ def test_inverse_time_needs_its_own_feed() -> None:
 
 def test_block_delete_and_tool_change() -> None:
     machine = Machine(delete_blocks=True, tool_change={2: 50.0})
-    change, event, move = run(b"/G0 X1\nT1 M6\nG0 X2", machine)
+    deleted, change, event, move = run(b"/G0 X1\nT1 M6\nG0 X2", machine)
+    assert deleted == Event("frame", 1)
     assert isinstance(change, Motion)
     assert change.machine_frame
     assert change.end[2] == 50

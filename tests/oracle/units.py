@@ -7,8 +7,8 @@ What may be asked of a rewritten program depends on what can be known:
   that moves Z alone has ended;
 - the drilling axis is *soft* after a cycle (it comes back up on its other flank) until a move commands it;
 - an unsure or soft axis may be off by its lash while it stands still; where it cuts, it must be right;
-- an axis is *lost* after a change of frame until a rapid commands it: it must be right all the same, but it may be
-  settled.
+- an axis is *lost* after a change of frame or a deletable block until a rapid commands it: it must be right all the
+  same, but it may be settled.
 """
 
 from __future__ import annotations
