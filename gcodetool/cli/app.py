@@ -13,9 +13,7 @@ import typer
 from typer.core import TyperGroup
 
 from gcodetool import __version__
-from gcodetool.cli import machine_sheet
-
-# from gcodetool.cli import compensate, reversals, verify
+from gcodetool.cli import compensate, machine_sheet, measure, reversals, verify
 from gcodetool.cli.exit_codes import ExitCode
 from gcodetool.cli.streams import OutputRefused, ReaderLeft, ReadFailed, WriteFailed, flush_standard_output
 from gcodetool.cli.terminal import say
@@ -88,10 +86,11 @@ app = typer.Typer(
     pretty_exceptions_show_locals=False,
     context_settings={"help_option_names": ["-h", "--help"]},
 )
-# app.command("compensate")(compensate.command)
-# app.command("verify")(verify.command)
-# app.command("reversals")(reversals.command)
+app.command("compensate")(compensate.command)
+app.command("verify")(verify.command)
+app.command("reversals")(reversals.command)
 app.add_typer(machine_sheet.app, name="machine")
+app.add_typer(measure.app, name="measure")
 
 
 def _print_version(wanted: bool) -> None:

@@ -118,6 +118,8 @@ def read(
     if line and (wide or same or narrow):
         raise SheetError("give the line of a vernier or the widths of tongues, not both.")
     _check_sizes({"step": step, "accuracy": accuracy, "resolution": resolution})
+    if not all(abs(each) < 1000 for each in (*(line or ()), *(wide or ()), *(same or ()), *(narrow or ()))):
+        raise SheetError("a line or a width is out of reach: write bare numbers below 1000.")
     if line:
         lash = uncertainty.lash_from_vernier(letter, line, step, method or f"vernier coupon, step {step:g}")
     else:

@@ -165,8 +165,14 @@ def _check(request: IndicatorRequest) -> None:
         raise SheetError(f"axis {axis}: from {request.low} to {request.high} is no room for the overrun at both ends.")
     if request.feed <= 0 or (request.dwell is not None and request.dwell <= 0):
         raise SheetError("the feed and the dwell must be more than 0.")
-    if (request.count or 1) < 1 or (request.runs or 1) < 1 or request.warm_up < 0:
-        raise SheetError("the numbers of targets and runs must be 1 or more.")
+    if not (1 <= _or_one(request.count) <= 1000 and 1 <= _or_one(request.runs) <= 1000 and 0 <= request.warm_up <= 100):
+        raise SheetError("the numbers of targets and runs must be 1 to 1000, warm-up runs 0 to 100.")
+    if request.reading_z is not None and request.reading_z > request.safe_z:
+        raise SheetError(f"the reading height {request.reading_z} is above the clearance height {request.safe_z}.")
+
+
+def _or_one(number: int | None) -> int:
+    return 1 if number is None else number
 
 
 def _targets(request: IndicatorRequest) -> tuple[Decimal, ...]:

@@ -201,7 +201,7 @@ def _arm(letter: str, columns: _Columns, radius: float | None, facts: Mapping[st
     if angle:
         return 1.0
     arm = radius if radius is not None else float(_number(facts.get("radius", "0").removesuffix("mm"), line, False))
-    if not arm > 0 or columns.kind != "indicator":
+    if not 0 < arm < math.inf or columns.kind != "indicator":
         reason = "a rotary axis read in mm needs the indicator's distance from its centre"
         raise Refusal(line, columns.value_unit, reason, "Give --radius 50, in mm, and a column indicator_mm")
     return math.degrees(1.0 / arm)

@@ -10,6 +10,7 @@ from __future__ import annotations
 
 import itertools
 import random
+import re
 from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from typing import NamedTuple
@@ -17,6 +18,7 @@ from typing import NamedTuple
 from gcodetool.inspection.curves import Gap, gap, is_still, nearest, stray
 from gcodetool.lash.path import Follower, Piece, Vector, intended
 from gcodetool.lash.play import shift
+from gcodetool.lash.running import Settings
 from gcodetool.machine import Machine
 from gcodetool.motion.controller import Controller
 from gcodetool.motion.frames import OFFSET_WORDS
@@ -27,6 +29,7 @@ from gcodetool.program.numbers import QUANTA_PER_MM, decimal_to_quanta
 TOLERANCE_MM = 0.0006
 _RUNS_KEPT = 64
 _HOLE_END = 0.01
+_OFFSET = re.compile(r"G5(?:[4-8]|9(?:\.[1-3])?)(?![\d.])")
 Blocks = Callable[[], Iterable[Block]]
 
 
@@ -78,9 +81,12 @@ class Run(NamedTuple):
     line: int
 
 
-def verify(original: Blocks, result: Blocks, machine: Machine, tolerance: float | None = None) -> Verdict:
-    """Compare two programs; each argument gives the blocks of a program anew at every call.
+def verify(
+    original: Blocks, result: Blocks, machine: Machine, stated: Settings | None = None, tolerance: float | None = None
+) -> Verdict:
+    """Compare two programs; ``original`` and ``result`` give the blocks of a program anew at every call.
 
+    ``stated`` is what the operator has said of the start, of offsets and tool lengths; the simulated machines keep to it.
     ``tolerance`` in mm; by default 0.0006, or the largest ripple of the machine where that is more.  Raises Refusal where a
     program cannot be read.
     """
@@ -92,28 +98,55 @@ def verify(original: Blocks, result: Blocks, machine: Machine, tolerance: float 
         stray_allowed=allowed * len(lashed) ** 0.5 + TOLERANCE_MM,
         corners=2 ** len(lashed),
     )
-    deletable = any(block.text.lstrip().startswith("/") for block in original())
-    for skip in (False, True) if deletable else (False,):
+    stated = stated or Settings()
+    for skip in _switches(original, stated):
         for seed in (1, 2):
-            setup = some_setup(seed, machine, skip)
-            base = base.joined(_compare(original(), result(), machine, setup))
+            setup = some_setup(seed, machine, stated, _first_offset(original), skip)
+            base = base.joined(_compare(original(), result(), machine, setup, stated))
             if seed == 1:
-                base = base.joined(_uncompensated(original(), machine, setup))
+                base = base.joined(_uncompensated(original(), machine, setup, stated))
     return base
 
 
-def some_setup(seed: int, machine: Machine, skip_deletable: bool = False) -> Setup:
-    """Arbitrary values for what a program does not say; the second set has a tool changer that moves the machine."""
+def _switches(original: Blocks, stated: Settings) -> tuple[bool, ...]:
+    """Positions of the block delete switch to try: both where the program uses it and nothing is said."""
+    if stated.block_delete is not None:
+        return (stated.block_delete,)
+    return (False, True) if any(block.text.lstrip().startswith("/") for block in original()) else (False,)
+
+
+def _first_offset(original: Blocks) -> str:
+    """The work offset that a program selects first: a stated start position is meant in it."""
+    for block in original():
+        found = _OFFSET.search(block.text.partition(";")[0].upper().partition("(")[0])
+        if found:
+            return found[0]
+    return OFFSET_WORDS[0]
+
+
+def some_setup(
+    seed: int, machine: Machine, stated: Settings, first_offset: str = "G54", skip_deletable: bool = False
+) -> Setup:
+    """Arbitrary values for what neither program nor operator says; the second set has a changer that moves the machine."""
     rng = random.Random(seed)
     sign = 1 if seed % 2 else -1
 
     def place(span: int) -> dict[str, int]:
         return {letter: sign * rng.randrange(1, span * 10_000) * (QUANTA_PER_MM // 10_000) for letter in ORDER}
 
+    start = place(50)
+    offsets = {word: place(200) | dict(stated.offsets.get(word, {})) for word in OFFSET_WORDS}
+    lengths = {h: rng.randrange(1, 900_000) * (QUANTA_PER_MM // 10_000) for h in range(200)} | dict(stated.lengths)
+    for letter, said in stated.start.items():
+        if said.position is not None:
+            start[letter] = offsets[first_offset].get(letter, 0) + decimal_to_quanta(said.position)
+    if stated.start:
+        # a controller that has just been set up has the frame in force in which the start was read
+        offsets["G54"] = offsets[first_offset]
     return Setup(
-        start=place(50),
-        offsets={word: place(200) for word in OFFSET_WORDS},
-        lengths={h: rng.randrange(1, 900_000) * (QUANTA_PER_MM // 10_000) for h in range(200)},
+        start=start,
+        offsets=offsets,
+        lengths=lengths,
         homes={"G28": place(300), "G30": place(300)},
         tool_change=place(100) if sign < 0 else None,
         units=machine.units,
@@ -226,13 +259,14 @@ class _Corner:
 class _Fleet:
     """The machine from every corner of the unknown; those that have become alike are simulated once."""
 
-    def __init__(self, machine: Machine, setup: Setup) -> None:
+    def __init__(self, machine: Machine, setup: Setup, stated: Settings) -> None:
         lash = {letter: float(axis.lash) for letter, axis in machine.axes.items()}
         datum = {letter: axis.datum for letter, axis in machine.axes.items()}
         lashed = [letter for letter in lash if lash[letter] > 0]
         self._at: Sequence[int] = [setup.start.get(letter, 0) for letter in ORDER]
         self._sides = [dict(zip(lashed, sides, strict=True)) for sides in itertools.product((-1, 1), repeat=len(lashed))]
-        self._corners = [_Corner(Follower(lash, datum, self._at, sides), _Sink(), 0) for sides in self._sides]
+        known = {letter: said.side for letter, said in stated.start.items() if said.side}
+        self._corners = [_Corner(Follower(lash, datum, self._at, sides, known), _Sink(), 0) for sides in self._sides]
 
     @property
     def base(self) -> _Corner:
@@ -279,11 +313,13 @@ def _contacts(blocks: Iterable[Block], setup: Setup) -> list[dict[str, int]]:
     return found
 
 
-def _compare(original: Iterable[Block], result: Iterable[Block], machine: Machine, setup: Setup) -> Verdict:
+def _compare(
+    original: Iterable[Block], result: Iterable[Block], machine: Machine, setup: Setup, stated: Settings
+) -> Verdict:
     kept = list(original)
     contacts = _contacts(kept, setup) if any("38." in block.text for block in kept) else []
     driven = _touching(machine, setup, contacts) if contacts else setup
-    got = _Fleet(machine, setup).runs(Controller(driven).run(result))
+    got = _Fleet(machine, setup, stated).runs(Controller(driven).run(result))
     return _pairs(_intended_runs(Controller(setup).run(kept)), got)
 
 
@@ -343,14 +379,13 @@ def _broken(want: Run | None, have: Run | None) -> str:
     )
 
 
-def _uncompensated(blocks: Iterable[Block], machine: Machine, setup: Setup) -> Verdict:
+def _uncompensated(blocks: Iterable[Block], machine: Machine, setup: Setup, stated: Settings) -> Verdict:
     """What the original would do on this machine: each feed move against the path it should have taken.
 
     The table lags behind its drive, so a point is compared with the move it belongs to and the one before; and the end of
     each move with the path that the table takes in it and in the next one.
     """
-    fleet = _Fleet(machine, setup)
-    follower = fleet.base.follower
+    follower = _Fleet(machine, setup, stated).base.follower
     worst = Gap()
     before: list[Piece] = []
     before_actual: list[Piece] = []

@@ -62,8 +62,6 @@ class Compensator:
 
     def finish(self) -> None:
         """Write out what is still held."""
-        if not self._begun:
-            self._write_header("", "")
         self.run.out.close()
 
     def feed_block(self, block: Block) -> None:
@@ -109,7 +107,7 @@ class Compensator:
 
     def _write_header(self, text: str, ending: str) -> None:
         if self._header:
-            line = f"; {self._header}" if text.lstrip().startswith(";") else f"({self._header})"
+            line = f"; {self._header}" if ";" in text and "(" not in text else f"({self._header})"
             self.run.out.put(line + (ending or self.run.usual_ending))
             self._header = ""
 

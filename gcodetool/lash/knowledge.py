@@ -17,7 +17,8 @@ from gcodetool.program.numbers import INCH_DIGIT, MM_DIGIT, decimal_to_quanta, r
 
 @dataclass(frozen=True, slots=True)
 class Start:
-    """What the operator states of an axis before the first block: position (mm, degrees) and side, None or 0 if unknown."""
+    """What the operator states of an axis before the first block: the position that the controller shows (mm, degrees) and
+    the side; None or 0 where unknown.  Off the datum side the axis is not where the controller shows it."""
 
     position: Decimal | None = None
     side: int = 0
@@ -51,8 +52,8 @@ class AxisKnowledge:
         self.framed = start.position is not None
         self.side = start.side
         self.decimals = 0
-        self.adrift = False
-        self.shift: int | None = self.shift_on(start.side, False) if start.side else 0
+        self.shift: int | None = 0
+        self.adrift = bool(start.side) and self.shift_on(start.side, False) != 0
 
     @property
     def idle(self) -> bool:

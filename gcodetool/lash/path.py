@@ -59,10 +59,18 @@ def _mm(position: Sequence[int]) -> Vector:
 class Follower:
     """The table (or tool) behind the drives; ``drive`` yields the pieces of its path for each commanded move.
 
-    ``lash`` and ``datum`` by axis letter; ``side`` is the side of every axis at the start and after each event that loses it.
+    ``lash`` and ``datum`` by axis letter; ``side`` is the side of every axis at the start and after each event that loses it;
+    ``known`` are the axes whose side at the start is known, and which it is.
     """
 
-    def __init__(self, lash: Mapping[str, float], datum: Mapping[str, int], at: Sequence[int], side: Mapping[str, int]) -> None:
+    def __init__(
+        self,
+        lash: Mapping[str, float],
+        datum: Mapping[str, int],
+        at: Sequence[int],
+        side: Mapping[str, int],
+        known: Mapping[str, int] | None = None,
+    ) -> None:
         """Stand at the commanded position ``at``, each axis on its side."""
         self._lash = [float(lash.get(letter, 0.0)) for letter in ORDER]
         self._datum = [datum.get(letter, -1) for letter in ORDER]
@@ -71,6 +79,10 @@ class Follower:
         self.actual = list(_mm(at))
         self.loose = set(self._lashed)
         self.lose(at, ORDER)
+        for letter, stands in (known or {}).items():
+            k = ORDER.index(letter)
+            self.actual[k] = at[k] / QUANTA_PER_MM - self._shift(k, stands)
+            self.loose.discard(k)
 
     def copy(self, sides: Mapping[str, int]) -> Follower:
         """Another machine in the same state that will find itself on other sides when it loses them."""

@@ -167,6 +167,8 @@ def test_force(measure, sheet: Path) -> None:
         (("read", "x", "--line", "3", "--write", "none.toml"), 74, "none.toml"),
         (("read", "x", "--line", "3", "--write", "router.toml", "--date", "today"), 2, "2024-05-31"),
         (("read", "x", "--line", "3", "--step", "-1"), 2, "--step"),
+        (("read", "x", "--line", "nan"), 2, "out of reach"),
+        (("read", "x", "--wide", "inf", "--narrow", "8"), 2, "out of reach"),
         (("evaluate", "none.csv"), 74, "none.csv"),
         (("evaluate", "-"), 65, "no reading"),
         (("trend", "none.toml"), 74, "none.toml"),

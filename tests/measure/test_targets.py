@@ -151,6 +151,9 @@ def test_the_wait_is_a_stop_or_a_dwell() -> None:
         ({"feed": D(0)}, "feed"),
         ({"dwell": D(0)}, "dwell"),
         ({"runs": -1}, "runs"),
+        ({"runs": 0}, "runs"),
+        ({"count": 5000}, "targets"),
+        ({"reading_z": D(6)}, "above"),
         ({"high": D("4.001"), "count": 20}, "unequal"),
     ],
 )

@@ -323,18 +323,18 @@ class _Controller:
         return given[p] + self.offset(p), given[q] + self.offset(q)
 
     def _probe(self, values: dict[int, float]) -> Motion:
-        """Straight to the target or to the first place where an axis meets its probe height."""
+        """Straight to the target or to the first place where an axis meets one of its probe places."""
         end = self.target(values)
         share = 1.0
-        for axis, height in self.machine.probes.items():
+        for axis, places in self.machine.probes.items():
             travel = end[axis] - self.position[axis]
-            if travel:
-                low, high = self.machine.play.get(axis, (0.0, 0.0))
-                stop = height + (high if travel > 0 else low)
-                part = (stop - self.position[axis]) / travel
+            low, high = self.machine.play.get(axis, (0.0, 0.0))
+            for place in places if travel else ():
+                part = (place + (high if travel > 0 else low) - self.position[axis]) / travel
                 share = min(share, part) if part >= 0 else share
-        stopped = tuple(a + share * (b - a) for a, b in zip(self.position, end, strict=True))
-        return self._move("probe", stopped if share < 1.0 else end, frozenset(values))
+        if share < 1.0:
+            end = tuple(a + share * (b - a) for a, b in zip(self.position, end, strict=True))
+        return replace(self._move("probe", end, frozenset(values)), touched=share < 1.0)
 
     # --- cycles ----------------------------------------------------------------------------------------------
 

@@ -47,7 +47,7 @@ class Machine:
     """Everything that the program does not say; positions are machine coordinates, mm and degrees.
 
     ``work`` holds the nine work offsets, ``lengths`` tool length by H number (a missing H has length 0), ``probes`` the
-    place on an axis where the probe changes state (the true place of the tool, not the command), ``play`` the interval
+    places on an axis where the probe changes state (of the true tool, not the command), ``play`` the interval
     (low, high) of command less actual per axis (needed only to know at which command the probe trips), ``tool_change``
     where M6 takes the axes (empty: M6 moves nothing), ``level_at_entry`` whether G98 returns to the level at the first
     line of a cycle (True) or of each line (False, NISTIR 6556).
@@ -60,7 +60,7 @@ class Machine:
     home30: Point = field(default_factory=_zero)
     inch: bool = False
     delete_blocks: bool = False
-    probes: dict[int, float] = field(default_factory=dict)
+    probes: dict[int, tuple[float, ...]] = field(default_factory=dict)
     play: dict[int, tuple[float, float]] = field(default_factory=dict)
     tool_change: dict[int, float] = field(default_factory=dict)
     level_at_entry: bool = False
@@ -74,7 +74,8 @@ class Motion:
     ``kind`` is rapid, feed or probe; ``named`` the indexes of the axes that the block commands; ``machine_frame`` is
     true for G53, the home leg of G28 and G30, and a tool changer; ``hole`` numbers the repetitions of cycles from 1 (0:
     no cycle) and ``normal`` is then the drilling axis; ``context`` is the state that metal feels: feed, feed mode,
-    spindle, speed, tool, coolant; ``minutes`` is the time asked for by G93, else 0.
+    spindle, speed, tool, coolant; ``minutes`` is the time asked for by G93, else 0; ``touched``: a
+    probe move stopped before its target.
     """
 
     kind: str
@@ -89,6 +90,7 @@ class Motion:
     code: int = 0
     context: tuple[object, ...] = ()
     minutes: float = 0.0
+    touched: bool = False
 
 
 @dataclass(frozen=True, slots=True)

@@ -33,15 +33,16 @@ def random_machine(rng: np.random.Generator, *, inch: bool = False, delete_block
 
 
 def with_probe(machine: Machine, program: bytes, rng: np.random.Generator) -> Machine:
-    """The same machine with something for the first probe move of ``program`` to touch, one time in four nothing."""
-    for item in run(program, machine):
-        if isinstance(item, Motion) and item.kind == "probe":
-            if rng.random() < 0.25:
-                return machine
-            share = rng.uniform(0.2, 0.9)
-            axis = max(item.named)
-            height = item.start[axis] + share * (item.end[axis] - item.start[axis])
-            return replace(machine, probes={axis: float(np.round(height, 4))})
+    """The same machine with something to touch for every probe move of ``program`` (twenty at most)."""
+    for _ in range(20):
+        moves = (item for item in run(program, machine) if isinstance(item, Motion) and item.kind == "probe")
+        miss = next((move for move in moves if not move.touched), None)
+        if miss is None:
+            break
+        axis = max(miss.named)
+        place = miss.start[axis] + rng.uniform(0.3, 0.9) * (miss.end[axis] - miss.start[axis])
+        places = (*machine.probes.get(axis, ()), float(np.round(place, 4)))
+        machine = replace(machine, probes={**machine.probes, axis: places})
     return machine
 
 

@@ -172,9 +172,9 @@ def test_offsets_in_the_program() -> None:
 
 
 def test_probe_stops_where_the_tool_touches() -> None:
-    machine = Machine(probes={2: -3.0}, play={2: (0.0, 0.2)})
+    machine = Machine(probes={2: (-9.9, -3.0)}, play={2: (0.0, 0.2)})
     assert [m.end[2] for m in motions("G0 Z1\nG38.2 Z-10 F50\nG92 Z0\nG0 Z5", machine)] == [1, -3, 2]
-    up = Machine(start=(0, 0, -9.0, 0, 0, 0), probes={2: -3.0}, play={2: (0.0, 0.2)})
+    up = Machine(start=(0, 0, -9.0, 0, 0, 0), probes={2: (-9.9, -3.0)}, play={2: (0.0, 0.2)})
     assert motions("G38.3 Z0 F50", up)[0].end[2] == pytest.approx(-2.8)
 
 

@@ -24,6 +24,8 @@ from tests.oracle.machine import Motion
 
 NO_MOTION = 1e-6
 """mm or degrees below which true motion counts as none (a take-up moves nothing)."""
+HARDLY = 3e-4
+"""mm or degrees that a take-up written as a rapid may move: lash is held in whole last digits (0.00001 in)."""
 Z = 2
 Axes = frozenset[int]
 NONE: Axes = frozenset()
@@ -103,9 +105,9 @@ def _join(pieces: list[Array]) -> Array:
     return np.vstack([pieces[0], *(piece[1:] for piece in pieces[1:])])
 
 
-def _moves(stroke: Stroke) -> bool:
+def _moves(stroke: Stroke, least: float = NO_MOTION) -> bool:
     """True if the tool really moves."""
-    return bool((np.abs(stroke.points[1:] - stroke.points[0]) > NO_MOTION).any())
+    return bool((np.abs(stroke.points[1:] - stroke.points[0]) > least).any())
 
 
 class _Splitter:
@@ -168,6 +170,9 @@ class _Splitter:
 
     def add_rapid(self, stroke: Stroke, real: bool) -> None:
         named = stroke.motion.named
+        if real and self.unit is not None and self.unit.kind == "feed" and not _moves(stroke, HARDLY):
+            self.unit.strokes.append(stroke)
+            real = False
         if real:
             self.close()
         self.learn(self.doubt.unknown(named) if stroke.motion.machine_frame else self.doubt.without(named))
