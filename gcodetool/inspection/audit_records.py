@@ -230,6 +230,7 @@ class Path:
     length_offset: Floats
     turning: Flags
     unplaced: Flags
+    chain: Ints
     events: tuple[tuple[int, int, str], ...]
     tool_words: tuple[str, ...] = ()
 
@@ -240,7 +241,7 @@ class Path:
 
 
 @dataclass(frozen=True, slots=True)
-class Material3D:
+class StockTaken:
     """The stock as the audit took it; ``said`` tells what was given and what was guessed, in sentences."""
 
     outline: tuple[Point, ...]
@@ -500,7 +501,7 @@ class Audit:
     program: str
     moves: int
     feed_moves: int
-    stock: Material3D
+    stock: StockTaken
     tools: tuple[str, ...]
     material: Material | None
     rows: tuple[MoveRow, ...]

@@ -25,6 +25,9 @@ MOST_CELLS = 4_000_000
 BATCH = 1_000_000
 # heights closer than this are one
 NO_HEIGHT = 1e-6
+# heights within a sort key: steps of a tenth of that, and how many there can be (1000 m)
+HEIGHT_STEP = 1e-7
+TALL = 1 << 40
 
 
 class Grid:
@@ -89,8 +92,9 @@ class Clearing:
         self._pieces, self._cuts, self._cutters, self.grid = pieces, cuts, cutters, grid
         self.depth = depth
         self._shape = _shapes(pieces)
-        # pieces that cleared a part of a cell in earlier blocks, sorted by cell
-        self._cell, self._piece, self._low = np.empty(0, np.int64), np.empty(0, np.int64), np.empty(0)
+        self._base = float(min(pieces[:, Z0].min(), pieces[:, Z1].min())) - 1.0 if len(pieces) else 0.0
+        # pieces that cleared a part of a cell in earlier blocks, sorted by cell and height
+        self._old, self._piece, self._low = np.empty(0, np.int64), np.empty(0, np.int64), np.empty(0)
         self._open(0, 1)
 
     def _open(self, first: int, span: int) -> None:
@@ -158,23 +162,37 @@ class Clearing:
         same = (place >= 0) & (self._full_key[place] // self._span == cell)
         return np.where(same, np.minimum(found, self._full_least[place]), found)
 
-    def asked(self, cell: Ints, piece: Ints) -> tuple[Ints, Ints, Floats]:
-        """Pieces before ``piece`` that cleared a part of a cell: ``(row, piece, lowest height)``, with repeats."""
+    def recent(self, cell: Ints, piece: Ints) -> tuple[Ints, Ints, Floats]:
+        """Pieces of this block before ``piece`` that cleared a part of a cell: ``(row, piece, lowest height)``."""
         base = cell * self._span
         low, high = np.searchsorted(self._part_key, base), np.searchsorted(self._part_key, base + (piece - self._first))
         row, index = expand(low, high - low)
-        low, high = np.searchsorted(self._cell, cell), np.searchsorted(self._cell, cell, "right")
-        old_row, old = expand(low, high - low)
-        return (
-            np.concatenate([row, old_row]),
-            np.concatenate([self._part_piece[index], self._piece[old]]),
-            np.concatenate([self._part_low[index], self._low[old]]),
-        )
+        return row, self._part_piece[index], self._part_low[index]
+
+    def older(self, cell: Ints, height: Floats) -> tuple[Ints, Ints]:
+        """Pieces of earlier blocks that cleared a part of a cell at or below a height: ``(row, piece)``."""
+        low, high = np.searchsorted(self._old, cell * TALL), np.searchsorted(self._old, self._key(cell, height), "right")
+        row, index = expand(low, high - low)
+        return row, self._piece[index]
+
+    def older_above(self, cell: Ints, height: Floats) -> Floats:
+        """The lowest height above a height at which an earlier block cleared a part of a cell; inf where there is none."""
+        place = np.searchsorted(self._old, self._key(cell, height), "right")
+        there = place < len(self._old)
+        there[there] = self._old[place[there]] // TALL == cell[there]
+        found = np.full(len(cell), np.inf)
+        found[there] = self._low[place[there]]
+        return found
+
+    def _key(self, cell: Ints, height: Floats) -> Ints:
+        """Cells and heights as one whole number in their order."""
+        step = np.clip((height - self._base) / HEIGHT_STEP, 0.0, TALL - 1.0)
+        return cell * TALL + step.astype(np.int64)
 
     def end(self) -> None:
         """Lay the block down: from now on it is part of what was cut before."""
         np.minimum.at(self.depth, self._full_key // self._span, self._full_least)
-        cell = np.concatenate([self._cell, self._part_key // self._span])
+        cell = np.concatenate([self._old // TALL, self._part_key // self._span])
         piece = np.concatenate([self._piece, self._part_piece])
         low = np.concatenate([self._low, self._part_low])
         keep = low < self.depth[cell] - NO_HEIGHT
@@ -184,7 +202,10 @@ class Clearing:
         # the same stretch cut again deeper makes the shallower one useless
         first = np.ones(len(cell), np.bool_)
         first[1:] = (cell[1:] != cell[:-1]) | (self._shape[piece[1:]] != self._shape[piece[:-1]])
-        self._cell, self._piece, self._low = cell[first], piece[first], low[first]
+        cell, piece, low = cell[first], piece[first], low[first]
+        key = self._key(cell, low)
+        order = np.argsort(key, kind="stable")
+        self._old, self._piece, self._low = key[order], piece[order], low[order]
         self._open(self._first + self._span - 1, 1)
 
 

@@ -20,6 +20,7 @@ Floats = NDArray[np.float64]
 STILL = 1e-6
 # pieces that differ by more than this are not taken for the same piece
 ALIKE = 0.002
+SURE = 0.0003
 # an axis that stands still near a quadrant point makes a short flat there, which sweeps no angle
 LOST_SWEEP = 0.3
 CHORD_ERROR = 1e-5
@@ -55,12 +56,16 @@ def gap(first: Sequence[Piece], second: Sequence[Piece]) -> Gap:
     found = _line_by_line(first, second)
     if found is None:
         found = _walk(first, second)
-    return found if found is not None else by_window(first, second)
+    if found is None or found.distance > SURE:
+        # the walk may have taken a neighbour for the nearest piece; the window sees more of the path
+        wide = by_window(first, second)
+        found = wide if found is None or wide.distance < found.distance else found
+    return found
 
 
 def stray(first: Sequence[Piece], second: Sequence[Piece]) -> Gap:
     """How far the corners of the second path, of straight pieces, lie from the first path."""
-    if len(first) > WINDOW or any(p.arc for p in first) or any(p.arc for p in second):
+    if len(first) > WINDOW:
         return by_window(first, second)
     found = Gap()
     for piece in second:

@@ -151,8 +151,8 @@ def _lines(
     crossings = [
         *_meet_circle(radius, cone.au, cone.av, cone.ra),
         *_meet_circle(radius, cone.bu, cone.bv, cone.rb),
-        *_meet_segment(radius, *cone.side(1.0)),
-        *_meet_segment(radius, *cone.side(-1.0)),
+        *meet_segment(radius, *cone.side(1.0)),
+        *meet_segment(radius, *cone.side(-1.0)),
     ]
     row, first, last = _between(crossings)
     middle = 0.5 * (first + last)
@@ -211,7 +211,7 @@ def _meet_circle(radius: Floats, u: Floats, v: Floats, other: Floats) -> list[Fl
     return [_front(np.where(meets, towards + sign * away, PI)) for sign in (1.0, -1.0)]
 
 
-def _meet_segment(radius: Floats, au: Floats, av: Floats, bu: Floats, bv: Floats) -> list[Floats]:
+def meet_segment(radius: Floats, au: Floats, av: Floats, bu: Floats, bv: Floats) -> list[Floats]:
     """Angles at which circles about the origin meet segments; pi where they do not."""
     du, dv = bu - au, bv - av
     square = np.maximum(du * du + dv * dv, 1e-30)

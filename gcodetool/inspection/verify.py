@@ -167,7 +167,12 @@ class _Sink:
 
     def add(self, piece: Piece, end: Vector) -> Run | None:
         """Take one piece; the run that it ends, if it ends one.  ``end`` is where the tool stood before it."""
-        if piece.hole:
+        if piece.hole in ("peck", "back"):
+            # depths on the way are cut again; how often depends on the play, the hole does not
+            return None
+        if piece.hole == "out":
+            piece = piece._replace(rapid=True)
+        elif piece.hole:
             piece = _bottom(piece)
         if is_still(piece) or (piece.rapid and _hardly_moves(piece)):
             return None
@@ -201,8 +206,6 @@ def _bottom(piece: Piece) -> Piece:
     if length <= _HOLE_END:
         return piece
     step = tuple([w / length * _HOLE_END for w in way])
-    if piece.hole == "out":
-        return piece._replace(end=tuple([a + s for a, s in zip(piece.start, step, strict=True)]))
     return piece._replace(start=tuple([b - s for b, s in zip(piece.end, step, strict=True)]))
 
 
@@ -357,7 +360,10 @@ def _pairs(wanted: Iterator[Run], got: Iterable[tuple[int, Run]]) -> Verdict:
         if want is None or want.rapid != have.rapid:
             return Verdict(feed=feed, stray=away, broken=_broken(want, have), runs=1)
         if want.rapid:
-            away = away.wider(stray(want.pieces, have.pieces))
+            # a rapid that only puts an axis right after a cycle has no counterpart: it is near where the tool stood
+            before = kept[number - 1] if number else None
+            stood = [before.pieces[-1]._replace(start=before.end, end=before.end, arc=None)] if before else []
+            away = away.wider(stray([*stood, *want.pieces], have.pieces))
         else:
             feed = feed.wider(gap(want.pieces, have.pieces))
         pieces += len(want.pieces) if not want.rapid and number > last else 0

@@ -115,7 +115,7 @@ def _write(task: _Task) -> None:
         _arrive(task, end, piece.sides)
     _finish(task, cut)
     run.tally.splits += len(pieces) - 1
-    run.put(command, texts)
+    run.put(command, texts, task.plane)
 
 
 def _take_up(task: _Task, piece: Piece, first: bool, in_air: bool = False) -> list[str]:

@@ -226,8 +226,10 @@ def _respelled(run: Running, command: Command, asked: Cycle, pieces: list[str], 
         if any(pieces[i].upper() == letter for i in range(1, len(pieces), 3)):
             continue
         number = text.strip()
-        if asked.absolute and not axis.idle and letter in (axis.letter, "R"):
-            number = run.plus(axis, number, command.after, _low(run, command, axis))
+        if not axis.idle and (letter == "R" or (asked.absolute and letter == axis.letter)):
+            # in G91 depth counts from R, and R from the command as it stands
+            add = 0 if asked.absolute else axis.shift or 0
+            number = run.plus(axis, number, command.after, _low(run, command, axis) - add)
         pieces = with_word(pieces, (letter, number), look)
     return pieces
 

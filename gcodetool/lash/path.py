@@ -176,15 +176,17 @@ class Follower:
     def _stretch(self, command: Piece, arc: Arc, low: float, high: float) -> Iterator[Piece]:
         """A part of an arc on which no lashed axis reverses."""
         begin, end = command.point(low), command.point(high)
-        contact = {}
+        contact, offset = {}, [0.0] * 6
         for k in self._lashed:
             way = end[k] - begin[k]
             if way:
-                wanted = self.actual[k] + self._shift(k, 1 if way > 0 else -1)
-                contact[k] = self._contact(command, k, low, high, wanted, 1 if way > 0 else -1)
+                side = 1 if way > 0 else -1
+                offset[k] = self._shift(k, side)
+                contact[k] = self._contact(command, k, low, high, self.actual[k] + offset[k], side)
         bounds = sorted({low, high, *(u for u in contact.values() if low < u < high)})
         for first, last in zip(bounds, bounds[1:], strict=False):
-            yield from self._part(command, arc, (first, last), contact)
+            still = {k for k in self._lashed if contact.get(k, math.inf) > first}
+            yield from self._part(command, arc, (first, last), still, offset)
 
     def _contact(self, command: Piece, k: int, low: float, high: float, wanted: float, way: int) -> float:
         """The share at which an axis gets into contact; ``low`` where it is, ``high`` or more where it never does."""
@@ -201,11 +203,10 @@ class Follower:
         return high
 
     def _part(
-        self, command: Piece, arc: Arc, bounds: tuple[float, float], contact: Mapping[int, float]
+        self, command: Piece, arc: Arc, bounds: tuple[float, float], still: set[int], offset: Sequence[float]
     ) -> Iterator[Piece]:
         """A part on which each axis either stands still or moves in contact all the way."""
         low, high = bounds
-        still = {k for k in self._lashed if contact.get(k, math.inf) > low}
         plane_still = [k for k in command.axes if k in still]
         steps = 1
         if len(plane_still) == 1 and any(command.start[k] != command.end[k] for k in range(6) if k not in command.axes):
@@ -215,8 +216,8 @@ class Follower:
             first = low + (high - low) * index / steps
             last = high if index == steps - 1 else low + (high - low) * (index + 1) / steps
             end = command.point(last)
-            then = [now[k] if k in still else end[k] - self._offset(k, command, low, high) for k in range(6)]
-            shifted = None if plane_still else self._shifted(command, arc, first, last)
+            then = [now[k] if k in still else end[k] - offset[k] for k in range(6)]
+            shifted = None if plane_still else _shifted(command, arc, first, last, offset)
             yield Piece(
                 command.rapid, command.line, self._show(now, command.point(first)), self._show(then, end),
                 shifted, command.axes,
@@ -224,20 +225,17 @@ class Follower:
             now = then
         self.actual = list(now)
 
-    def _offset(self, k: int, command: Piece, low: float, high: float) -> float:
-        if k not in self._lashed:
-            return 0.0
-        return self._shift(k, 1 if command.point(high)[k] > command.point(low)[k] else -1)
 
-    def _shifted(self, command: Piece, arc: Arc, low: float, high: float) -> Arc:
-        first, second = (self._offset(k, command, low, high) for k in command.axes)
-        return Arc(
-            centre=(arc.centre[0] - first, arc.centre[1] - second),
-            start_radius=arc.radius(low),
-            end_radius=arc.radius(high),
-            start_angle=arc.start_angle + arc.sweep * low,
-            sweep=arc.sweep * (high - low),
-        )
+def _shifted(command: Piece, arc: Arc, low: float, high: float, offset: Sequence[float]) -> Arc:
+    """The part of an arc between two shares, its centre moved against the offsets of the plane axes."""
+    first, second = (offset[k] for k in command.axes)
+    return Arc(
+        centre=(arc.centre[0] - first, arc.centre[1] - second),
+        start_radius=arc.radius(low),
+        end_radius=arc.radius(high),
+        start_angle=arc.start_angle + arc.sweep * low,
+        sweep=arc.sweep * (high - low),
+    )
 
 
 def _between(begin: Vector, end: Vector, share: float) -> Vector:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Collection, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from decimal import Decimal
 
@@ -83,10 +83,10 @@ class Running:
         """How a new line beside this block is written."""
         return look_of(command.pieces, command.shape.lower, self.usual_blank)
 
-    def put(self, command: Command, texts: Sequence[str]) -> None:
-        """Send the lines that stand for a block."""
+    def put(self, command: Command, texts: Sequence[str], touched: Collection[str] = ()) -> None:
+        """Send the lines that stand for a block; ``touched`` are axes that it moves without having a word of them."""
         block = command.block
-        touched = [letter for letter, _ in command.shape.axes]
+        touched = [*touched, *(letter for letter, _ in command.shape.axes)]
         if len(texts) > 1 or texts[0] != block.text:
             self.tally.changed += 1
             if "*" in command.pieces[-1]:

@@ -167,7 +167,8 @@ class Controller:
         normal = PLANE_AXES[command.after.plane][2]
         cycle = read_cycle(command, self.sticky, start[normal])
         for what, targets in cycle_steps(cycle, start):
-            move = self._go(what == "rapid", {a: value + self.frames.origin(a) for a, value in targets.items()})
+            goal = {a: value + self.frames.origin(a) for a, value in targets.items()}
+            move = self._go(what in ("rapid", "back"), goal)
             yield move if what == "rapid" else move._replace(hole=what)
             if command.after.distance == "G90":
                 self.unplaced.difference_update(targets)

@@ -1,8 +1,8 @@
 """Drilling and boring cycles: their sticky words, and the moves each stands for (NISTIR 6556, 3.5.16).
 
 The normal axis of the plane is called Z here and the plane axes X and Y, whatever the plane.  Lengths in quanta.  Moves are
-given in the program frame; a move names only the axes that it is about.  A step is ``rapid``, ``in`` (a feed that cuts) or
-``out`` (a feed that comes back).
+given in the program frame; a move names only the axes that it is about.  A step is ``rapid``, ``in`` (a feed that cuts),
+``out`` (a feed that comes back), ``peck`` (a feed to a depth on the way) or ``back`` (a rapid between pecks).
 """
 
 from __future__ import annotations
@@ -135,7 +135,7 @@ def _repeats(command: Command) -> int:
 
 
 def cycle_steps(cycle: Cycle, start: Mapping[str, int]) -> Iterator[Step]:
-    """The moves of a cycle block from ``start``: ``(rapid, in or out; targets)`` in order."""
+    """The moves of a cycle block from ``start``, in order."""
     first, second, normal = cycle.plane
     place = {first: start[first], second: start[second]}
     if start[normal] < cycle.level:
@@ -164,10 +164,10 @@ def _pecks(cycle: Cycle, normal: str) -> Iterator[Step]:
     for _ in range(MOST_PECKS):
         if depth <= cycle.bottom:
             return
-        yield "in", {normal: depth}
+        yield "peck", {normal: depth}
         if cycle.word == "G83":
-            yield "rapid", {normal: cycle.clear}
-        yield "rapid", {normal: min(depth + PECK_CLEARANCE, cycle.level)}
+            yield "back", {normal: cycle.clear}
+        yield "back", {normal: min(depth + PECK_CLEARANCE, cycle.level)}
         depth -= cycle.peck
 
 

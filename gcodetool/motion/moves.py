@@ -34,7 +34,8 @@ class Move(NamedTuple):
     """One motion: ``rapid`` or feed, source line, both ends, the arc in machine coordinates (mm) for an arc.
 
     ``axes`` are the indexes of the first and second plane axis of the arc.  ``unplaced`` are the letters whose start is not
-    known from the program, so that their direction is not either.  ``hole`` is "in" or "out" for the feeds of a cycle.
+    known from the program, so that their direction is not either.  ``hole`` is what a move is to the
+    hole of a cycle: "in", "out", "peck", "back", or "" where it is none of them (see ``cycles``).
     """
 
     rapid: bool

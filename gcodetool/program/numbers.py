@@ -24,7 +24,7 @@ def exact(text: str) -> tuple[int, int]:
     """
     head, _, tail = text.partition(".")
     try:
-        return int(head + tail), len(tail)
+        return int(head + tail), len(tail.lstrip(" \t"))
     except ValueError:
         head, _, tail = "".join(text.split()).partition(".")
         return int(head + tail), len(tail)
@@ -33,7 +33,7 @@ def exact(text: str) -> tuple[int, int]:
 def to_quanta(text: str, digit: tuple[int, ...]) -> int:
     """Read number text as quanta; ``digit`` is MM_DIGIT or INCH_DIGIT by the units in force."""
     head, _, tail = text.partition(".")
-    decimals = len(tail)
+    decimals = len(tail.lstrip(" \t"))
     try:
         value = int(head + tail)
     except ValueError:

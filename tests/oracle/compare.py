@@ -238,16 +238,17 @@ def _compare_rapids(p: Unit, q: Unit, terms: Terms) -> Report:
 
 
 def _between_rapids(p: Unit, q: Unit, terms: Terms) -> Report:
-    """Every rapid of the original must end where some rapid of the result ends; the via point of G28 is let off."""
+    """Every rapid of the original must end where some rapid of the result begins or ends; G28's via point is let off."""
     report = Report()
-    stops = np.array([stroke.points[-1] for stroke, _ in q.rapid] or [q.start])
+    begin = q.rapid[0][0].points[0] if q.rapid else q.start
+    stops = np.array([begin, *(stroke.points[-1] for stroke, _ in q.rapid)])
     for k, (stroke, loose) in enumerate(p.rapid[:-1]):
         following = p.rapid[k + 1][0].motion
         if following.machine_frame and following.line == stroke.motion.line:
             continue
         gaps = np.linalg.norm(_beyond(stops - stroke.points[-1], terms, loose), axis=1)
         at = int(gaps.argmin())
-        line = q.rapid[at][0].motion.line if q.rapid else 0
+        line = q.rapid[max(at - 1, 0)][0].motion.line if q.rapid else 0
         report = report.merge(Report(rapid_end=Finding(float(gaps[at]), stroke.motion.line, line)))
     return report
 
@@ -283,7 +284,8 @@ def _context_faults(p: Unit, q: Unit, terms: Terms) -> Iterator[str]:
             return
     if len(runs[0]) != len(runs[1]):
         yield f"line {p.last_line()}: feed or spindle changes {len(runs[0])} became {len(runs[1])}"
-    times = [sum(s.motion.minutes for s in unit.strokes) for unit in (p, q)]
+    least = 2 * terms.tolerance
+    times = [sum(s.motion.minutes for s in unit.strokes if length(s.points) > least) for unit in (p, q)]
     if abs(times[0] - times[1]) > 0.01 * times[0]:
         yield f"line {p.last_line()}: {times[0]:.6f} minutes in G93 became {times[1]:.6f}"
 

@@ -170,9 +170,10 @@ class _Splitter:
 
     def add_rapid(self, stroke: Stroke, real: bool) -> None:
         named = stroke.motion.named
-        if real and self.unit is not None and self.unit.kind == "feed" and not _moves(stroke, HARDLY):
+        if self.unit is not None and self.unit.kind == "feed" and not _moves(stroke, HARDLY):
+            # a take-up in the midst of a feed; it settles nothing
             self.unit.strokes.append(stroke)
-            real = False
+            return
         if real:
             self.close()
         self.learn(self.doubt.unknown(named) if stroke.motion.machine_frame else self.doubt.without(named))
