@@ -289,13 +289,14 @@ class Engagement:
     """What the cutter meets along the whole program.
 
     ``touching`` marks samples that remove nothing but rub along a face cut before (a spring pass); ``buried`` is the share of
-    the end face of a plunge that stands on material.
+    the end face of a plunge or ramp that stands on material; ``volume`` in mm^3 is what a plunge removes.
     """
 
     samples: Samples
     slices: Slices
     touching: Flags
     buried: Floats
+    volume: Floats
 
 
 @dataclass(frozen=True, slots=True)

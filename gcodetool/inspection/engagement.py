@@ -30,6 +30,8 @@ PIECE = 4.0
 THIN, GROWTH = 0.005, 0.35
 BLOCK = 512
 PROBES = 4096
+# a motion that falls by less than this share of its length cuts with its sides only
+STEEP = 0.02
 RINGS = 4
 """The end face of a plunge is looked at on this many rings of equal area."""
 
@@ -88,6 +90,7 @@ class _Follower:
         self.clearing = Clearing(self.pieces, ~path.rapid[self.move], cutters, self.grid, depth)
         self.touching = np.zeros(len(self.piece_of), np.bool_)
         self.buried = np.zeros(len(self.piece_of))
+        self.volume = np.zeros(len(self.piece_of))
 
     # ---- setting up -----------------------------------------------------------------------------------------------
 
@@ -136,10 +139,10 @@ class _Follower:
             lateral = rows[~self.samples.vertical[rows]]
             for some in _split(lateral):
                 found.extend(self._lateral(some))
-            for some in _split(rows[self._plunges(rows)]):
-                self._plunge(some)
+            for some in _split(rows[self._falling(rows)]):
+                self._end_face(some)
             self.clearing.end()
-        return Engagement(self.samples, _joined(found), self.touching, self.buried)
+        return Engagement(self.samples, _joined(found), self.touching, self.buried, self.volume)
 
     def _blocks(self) -> Iterator[tuple[int, int]]:
         """Ranges of pieces that touch a bounded number of cells."""
@@ -173,37 +176,44 @@ class _Follower:
             found[row[thick]] = True
         return found
 
-    def _plunges(self, rows: Ints) -> Flags:
+    def _falling(self, rows: Ints) -> Flags:
+        """Plunges, and ramps steep enough for the end face to count."""
         move = self.samples.move[rows]
-        down = self.path.end[move, 2] < self.path.start[move, 2]
-        return self.samples.vertical[rows] & down & (self.samples.z[rows] < self.top - NO_HEIGHT)
+        fall = self.path.start[move, 2] - self.path.end[move, 2]
+        steep = fall > np.where(self.samples.vertical[rows], 0.0, STEEP * self.path.length[move])
+        return steep & (self.samples.z[rows] < self.top - NO_HEIGHT)
 
-    def _plunge(self, rows: Ints) -> None:
-        """The share of the end face that stands on material."""
-        piece = self.piece_of[rows]
+    def _end_face(self, rows: Ints) -> None:
+        """The share of the end face that stands on material, and the volume that a plunge removes."""
+        piece, upright = self.piece_of[rows], self.samples.vertical[rows]
+        tool = self.tool[piece]
+        # a plunge is looked at where it ends, with what was cut before it; a ramp while it goes down
+        tip = self.samples.z[rows] - np.where(upright, 0.0, TOUCH)
         for k in range(RINGS):
+            ring = self.cutters.radius[tool] * np.sqrt((k + 0.5) / RINGS)
             for ahead in (1.0, -1.0):
-                tool = self.tool[piece]
-                ring = self.cutters.radius[tool] * np.sqrt((k + 0.5) / RINGS)
-                circle = Circles(
-                    self.samples.x[rows], self.samples.y[rows], np.full(len(rows), ahead), np.zeros(len(rows)), ring
-                )
-                probes = _Probes(rows, circle, self.samples.z[rows], tool, piece, ring)
-                row, first, last = self._open(probes, ring, probes.tip + NO_HEIGHT)
+                x, y = self.samples.x[rows], self.samples.y[rows]
+                circle = Circles(x, y, np.full(len(rows), ahead), np.zeros(len(rows)), ring)
+                probes = _Probes(rows, circle, tip, tool, piece, ring)
+                row, first, last = self._open(probes, ring, tip + NO_HEIGHT)
                 np.add.at(self.buried, rows[row], (last - first) / (2.0 * PI * RINGS))
+                for sample, first, last, low, high, _ in self._rise(probes.of(upright)):
+                    share = (last - first) / (2.0 * PI * RINGS) * (high - low)
+                    np.add.at(self.volume, sample, share * PI * self.cutters.radius[self.tool[self.piece_of[sample]]] ** 2)
 
     # ---- one probe ------------------------------------------------------------------------------------------------
 
     def _rise(self, probes: _Probes) -> Iterator[Found]:
         """Engaged intervals from the tip upwards, slice by slice, until there is no material above."""
         low = probes.tip.copy()
-        shaped = self.cutters.kind[probes.tool] != FLAT
+        shaped = (self.cutters.kind[probes.tool] != FLAT) & np.isnan(probes.ring)
         full = self.cutters.radius[probes.tool]
         while len(low):
             zone = shaped & (low - probes.tip < full)
             cap = np.where(zone, low + np.maximum(0.1 * full, low - probes.tip), self.top)
             cap = np.minimum(cap, self.top)
             radius = np.where(zone, radius_at(self.cutters, probes.tool, 0.5 * (low + cap) - probes.tip), full)
+            radius = np.where(np.isnan(probes.ring), radius, probes.ring)
             circles = probes.wider(radius)
             asked = _Asked(self, circles, probes.piece, low)
             least = np.maximum(THIN, GROWTH * (low - probes.tip))

@@ -77,7 +77,9 @@ class Follower:
         self.sides = dict(side)
         self._lashed = [k for k in range(6) if self._lash[k] > 0.0]
         self.actual = list(_mm(at))
-        self.loose = set(self._lashed)
+        self.loose: set[int] = set()
+        self._command = list(_mm(at))
+        self._off = [0.0] * 6
         self.lose(at, ORDER)
         for letter, stands in (known or {}).items():
             k = ORDER.index(letter)
@@ -88,16 +90,31 @@ class Follower:
         """Another machine in the same state that will find itself on other sides when it loses them."""
         other = copy.copy(self)
         other.actual, other.loose, other.sides = list(self.actual), set(self.loose), dict(sides)
+        other._command, other._off = list(self._command), list(self._off)
         return other
 
     def lose(self, at: Sequence[int], letters: str) -> None:
-        """Put these axes on their unknown side again, the command standing at ``at``."""
+        """Put these axes on their unknown side again, the command standing at ``at``.
+
+        An axis that is not moved by what loses its side is taken to be where it was: nobody can say better.
+        """
+        self._note_offsets(at, letters)
         for k in range(6):
             if ORDER[k] in letters and k not in self._lashed:
                 self.actual[k] = at[k] / QUANTA_PER_MM
             elif ORDER[k] in letters:
                 self.actual[k] = at[k] / QUANTA_PER_MM - self._shift(k, self.sides.get(ORDER[k], -1))
                 self.loose.add(k)
+
+    def _note_offsets(self, at: Sequence[int], letters: str) -> None:
+        for k in self._lashed:
+            if ORDER[k] in letters:
+                stood = abs(at[k] / QUANTA_PER_MM - self._command[k]) <= CONTACT
+                if not stood:
+                    self._off[k] = 0.0
+                elif k not in self.loose:
+                    self._off[k] = self.actual[k] - self._command[k]
+                self._command[k] = at[k] / QUANTA_PER_MM
 
     def _shift(self, k: int, side: int) -> float:
         return float(shift(side, self._lash[k], self._datum[k]))
@@ -107,8 +124,8 @@ class Follower:
         return tuple(self.actual), frozenset(self.loose)
 
     def seen(self, at: Sequence[int]) -> Vector:
-        """Where the table is, an axis that has not moved yet counting as where its command is."""
-        return tuple([at[k] / QUANTA_PER_MM if k in self.loose else value for k, value in enumerate(self.actual)])
+        """Where the table is; an axis that has not moved since its side was lost counts as where it was taken to be."""
+        return self._show(self.actual, _mm(at))
 
     def drive(self, move: Move) -> Iterator[Piece]:
         """The pieces of the actual path; a move that only crosses lash gives one piece of no length."""
@@ -117,6 +134,7 @@ class Follower:
             moving = {k for k in self.loose if move.start[k] != move.end[k] or (move.arc and k in move.axes)}
             before = self.seen(move.start) if moving else None
             self.loose -= moving
+        self._command = list(_mm(move.end))
         pieces = self._line(move) if move.arc is None else self._arc(move, move.arc)
         if before is None:
             yield from pieces
@@ -129,7 +147,7 @@ class Follower:
     def _show(self, actual: Sequence[float], command: Vector) -> Vector:
         if not self.loose:
             return tuple(actual)
-        return tuple([command[k] if k in self.loose else actual[k] for k in range(6)])
+        return tuple([command[k] + self._off[k] if k in self.loose else actual[k] for k in range(6)])
 
     # ---- lines ----------------------------------------------------------------------------------------------------
 
