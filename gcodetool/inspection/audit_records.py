@@ -161,7 +161,8 @@ class Material:
     """Cutting data of a material.
 
     ``kt``, ``kr``, ``ka`` are cutting coefficients in N/mm^2, ``et``, ``er``, ``ea`` edge coefficients in N/mm (tangential,
-    radial, axial).  Where ``kt`` is None the specific force is ``kc11 * h**-mc`` (Kienzle) and ``kr`` its radial share.
+    radial, axial).  Where ``kt`` is None the specific force is ``kc11 * h**-mc`` (Kienzle), and ``kr``, ``ka`` are its
+    radial and axial shares, without unit.
     ``low`` and ``high`` are the factors of the stated band.  ``least_chip`` is the chip below which the edge rubs, ``most_chip``
     the chip load not to be passed on a light machine; mm.
     """
@@ -361,6 +362,28 @@ class Holding:
     verdict: Ints
     ratio: Floats
     push: Ints
+
+
+@dataclass(frozen=True, slots=True)
+class Shape:
+    """Something a caliper can measure, as recognised in the path.
+
+    ``kind`` is bore, boss, arc, wall, slot or hole.  ``moves`` are the moves that leave it, in order, from the first to
+    the second of ``ends``.  ``centre`` and ``radius``
+    are those of the path for round ones.  ``side`` is +1 where the material stands left of the feed, -1 right, 0 both.
+    ``normal`` points into the material of a straight wall.  ``cutter`` is the radius of the cutter there.
+    """
+
+    kind: str
+    moves: tuple[int, ...]
+    lines: tuple[int, int]
+    ends: tuple[Point, Point]
+    cutter: float
+    depth: float
+    centre: Point = (0.0, 0.0)
+    radius: float = 0.0
+    side: int = 0
+    normal: Point = (0.0, 0.0)
 
 
 @dataclass(frozen=True, slots=True)

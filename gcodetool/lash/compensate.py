@@ -13,6 +13,7 @@ from gcodetool.errors import Refusal
 from gcodetool.lash import curved, drilling, straight
 from gcodetool.lash.doubt import Doubt
 from gcodetool.lash.known_frames import KnownFrames
+from gcodetool.lash.quick import Quick
 from gcodetool.lash.running import Running, Settings
 from gcodetool.lash.tally import Tally
 from gcodetool.machine import Machine
@@ -37,6 +38,7 @@ class Compensator:
         """``header`` is the text of the comment to write near the top; ``again`` allows a program that has ours already."""
         self.run = Running(machine, settings, write)
         self._doubt = Doubt(self.run)
+        self._quick = Quick(self.run, self._ordinary, self._is_open)
         self._frames = KnownFrames(self.run)
         self._drilling = drilling.Drilling(Sticky())
         self._movers = _MOVERS | {
@@ -55,8 +57,7 @@ class Compensator:
 
     def rewrite(self, blocks: Iterable[Block]) -> Tally:
         """Take all blocks and finish; raises Refusal at the first block that cannot be rewritten."""
-        for block in blocks:
-            self.feed_block(block)
+        self._quick.stream(blocks)
         self.finish()
         return self.tally
 
@@ -66,8 +67,15 @@ class Compensator:
 
     def feed_block(self, block: Block) -> None:
         """Take one block."""
+        self._quick.stream((block,))
+
+    def _is_open(self) -> bool:
+        """True inside the program, with no mode in doubt."""
+        return self._begun and not self._ended and not self._doubt.fields
+
+    def _ordinary(self, block: Block) -> None:
+        """One block, whatever it is."""
         run = self.run
-        run.tally.blocks += 1
         if block.ending:
             run.usual_ending = block.ending
         if self._ended:

@@ -38,7 +38,14 @@ class _Task:
     move: ArcMove
     goal: dict[str, int]
     begin: dict[str, int]
-    places: int
+
+    @property
+    def places(self) -> int:
+        """Decimals of split points and centres: those of the grid, of the block's words and of the start."""
+        run, command = self.run, self.command
+        words = [decimals_of(command.number(a)) for a in "XYZIJKR" if command.has(a)]
+        stands = [run.axes[a].decimals for a in (*self.plane, *self.goal) if not run.axes[a].rotary]
+        return min(max(run.least(command.after.units == "G20"), *words, *stands), DEEPEST_DECIMALS)
 
     @property
     def plane(self) -> tuple[str, str]:
@@ -70,7 +77,7 @@ def arc(run: Running, command: Command) -> None:
     _check_known(run, command, goal)
     begin = {letter: axis.position for letter, axis in run.axes.items()}
     move = arc_move(command, begin, goal)
-    _write(_Task(run, command, move, goal, begin, _places(run, command, (*plane, *goal))))
+    _write(_Task(run, command, move, goal, begin))
 
 
 def _check_known(run: Running, command: Command, goal: Mapping[str, int]) -> None:
@@ -83,13 +90,6 @@ def _check_known(run: Running, command: Command, goal: Mapping[str, int]) -> Non
             reason = f"an arc that starts from an unknown {what} of {letter}"
             way_out = f"Bring the axis there with a rapid (G0) first, or state --start {letter.lower()}=POSITION+"
             raise command.refusal(command.block.text.strip()[:40], reason, way_out)
-
-
-def _places(run: Running, command: Command, letters: tuple[str, ...]) -> int:
-    """Decimals of split points and centres: those of the grid, of the block's words and of the start."""
-    words = [decimals_of(command.number(a)) for a in "XYZIJKR" if command.has(a)]
-    stands = [run.axes[a].decimals for a in letters if not run.axes[a].rotary]
-    return min(max(run.least(command.after.units == "G20"), *words, *stands), DEEPEST_DECIMALS)
 
 
 def _write(task: _Task) -> None:

@@ -273,6 +273,7 @@ def _leave_normal(run: Running, command: Command, asked: Cycle, axis: AxisKnowle
     if asked.clear - asked.bottom < axis.mm_lash or axis.shift is None:
         axis.lose_side(command_is_exact=False)
     else:
+        run.maybe_adrift = True
         axis.adrift = axis.shift != axis.shift_on(1, run.is_inch(axis, command.after))
 
 

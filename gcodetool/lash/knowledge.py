@@ -34,7 +34,7 @@ class AxisKnowledge:
 
     __slots__ = (
         "adrift", "datum", "decimals", "extreme", "framed", "inch_lash", "letter", "margin", "mm_lash", "position", "ripple",
-        "rotary", "shift", "side",
+        "rotary", "shift", "shifts", "side",
     )  # fmt: skip
 
     def __init__(self, axis: Axis, machine: Machine, start: Start) -> None:
@@ -47,6 +47,8 @@ class AxisKnowledge:
         self.inch_lash = self.mm_lash if axis.rotary else round_to_grid(lash, INCH_DIGIT, machine.decimals + 1)
         # below the output resolution a reversal is rounding, not motion
         self.ripple = max(decimal_to_quanta(axis.ripple or Decimal(0)), MM_DIGIT[machine.decimals])
+        # by inch or mm, then by side: shifts[False][-1] is the shift in mm on the side -
+        self.shifts = tuple((0, shift(1, lash, self.datum), shift(-1, lash, self.datum)) for lash in (self.mm_lash, self.inch_lash))
         self.margin = decimal_to_quanta(machine.settle_margin)
         self.position = self.extreme = decimal_to_quanta(start.position or Decimal(0))
         self.framed = start.position is not None
@@ -66,7 +68,7 @@ class AxisKnowledge:
 
     def shift_on(self, side: int, inch: bool) -> int:
         """The shift that belongs to a side."""
-        return shift(side, self.inch_lash if inch else self.mm_lash, self.datum)
+        return self.shifts[inch][side]
 
     def side_for(self, target: int) -> int:
         """The side that a monotone move to ``target`` asks for; the present one where it is no reversal."""

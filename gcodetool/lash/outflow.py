@@ -28,7 +28,7 @@ class Outflow:
 
     def __init__(self, write: Callable[[str], object], look_ahead: int) -> None:
         """Hold at most ``look_ahead`` blocks; 0 turns the slot off."""
-        self._write = write
+        self.write = write
         self._look_ahead = look_ahead
         self._held: list[str] = []
         self._open_axes: set[str] = set()
@@ -38,7 +38,7 @@ class Outflow:
     def put(self, text: str, touched: Collection[str] = ()) -> None:
         """Send text, or hold it while the slot is open; ``touched`` are the axes it has words of."""
         if self.slot is None:
-            self._write(text)
+            self.write(text)
             return
         self._held.append(text)
         self._open_axes.difference_update(touched)
@@ -67,8 +67,8 @@ class Outflow:
         if slot is None:
             return
         if self._words:
-            self._write(new_line([("G", "0"), *self._words], slot.look) + slot.ending)
+            self.write(new_line([("G", "0"), *self._words], slot.look) + slot.ending)
             self._words.clear()
         for text in self._held:
-            self._write(text)
+            self.write(text)
         self._held.clear()

@@ -60,6 +60,7 @@ class Running:
         self.machine = machine
         self.settings = settings
         self.state = ModalState(units=units)
+        self.maybe_adrift = any(said.side for said in settings.start.values())
         self.axes = knowledge(machine, settings.start)
         self.lashed = [axis.letter for axis in self.axes.values() if not axis.idle]
         self.out = Outflow(write, settings.look_ahead)
@@ -158,6 +159,9 @@ class Running:
 
     def reseat(self, command: Command) -> list[str]:
         """The line, if one is needed, that brings axes left adrift by a cycle to where they should be."""
+        if not self.maybe_adrift:
+            return []
+        self.maybe_adrift = False
         adrift = {letter: self.axes[letter].side for letter in self.lashed if self.axes[letter].adrift}
         if not adrift:
             return []

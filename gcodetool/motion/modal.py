@@ -60,6 +60,7 @@ class GWords:
 
 _sorted: dict[str, GWords] = {}
 # keyed by identity, which is safe because each entry keeps both objects alive, and much cheaper than hashing them
+_states: dict[ModalState, ModalState] = {}
 _steps: dict[tuple[int, int], tuple[ModalState, GWords, ModalState]] = {}
 NO_G_WORDS = GWords()
 
@@ -124,7 +125,8 @@ def step(state: ModalState, words: GWords) -> ModalState:
     if len(_steps) > 4096:
         _steps.clear()
     after = replace(state, **dict(words.sets))
-    after = state if after == state else after
+    # equal states are one object, or a program that goes to and fro would never meet a cached step
+    after = state if after == state else _states.setdefault(after, after)
     _steps[key] = (state, words, after)
     return after
 

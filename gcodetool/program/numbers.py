@@ -114,4 +114,5 @@ def write_quanta(quanta: int, digit: tuple[int, ...], decimals: int, like: str =
 
 def decimals_of(text: str) -> int:
     """Digits after the point as written."""
-    return len("".join(text.partition(".")[2].split()))
+    tail = text.partition(".")[2]
+    return len(tail) if tail.isdigit() else len("".join(tail.split()))

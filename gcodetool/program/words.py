@@ -9,7 +9,7 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 
-_WORD = re.compile(r"([A-Za-z])([ \t]*[-+]?(?:\d+\.?\d*|\.\d+))")
+WORD = re.compile(r"([A-Za-z])([ \t]*[-+]?(?:\d+\.?\d*|\.\d+))")
 _LOOSE_WORD = re.compile(r"([A-Za-z:])((?:[ \t]*[-+])?(?:[ \t]*[\d.])+)")
 _BLANKS = re.compile(r"[ \t]+")
 _HEAD = re.compile(r"[ \t]*/[1-9]?")
@@ -45,7 +45,7 @@ _shapes: dict[str, Shape] = {}
 
 def split(text: str) -> list[str]:
     """Cut a block's text into pieces; raises NotWords for text that no rule covers."""
-    pieces = _WORD.split(text)
+    pieces = WORD.split(text)
     gaps = "".join(pieces[::3])
     if not gaps or gaps.isspace():
         return pieces

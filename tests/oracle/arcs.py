@@ -71,9 +71,7 @@ def arc_by_centre(
     return Arc(axes, centre, begin, sweep, radius, end_radius)
 
 
-def arc_by_radius(
-    axes: tuple[int, int], start: Point, end: Point, radius: float, clockwise: bool, turns: int
-) -> Arc:
+def arc_by_radius(axes: tuple[int, int], start: Point, end: Point, radius: float, clockwise: bool, turns: int) -> Arc:
     """Arc of a signed radius in mm: positive turns at most half a circle, negative at least (NISTIR 6556 3.5.3.1)."""
     p, q = axes
     chord_p, chord_q = end[p] - start[p], end[q] - start[q]

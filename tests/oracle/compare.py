@@ -238,7 +238,7 @@ def _compare_rapids(p: Unit, q: Unit, terms: Terms) -> Report:
 
 
 def _between_rapids(p: Unit, q: Unit, terms: Terms) -> Report:
-    """Every rapid of the original must end where some rapid of the result begins or ends; G28's via point is let off."""
+    """Every rapid of the original must end where a rapid of the result begins or ends; G28's via point is let off."""
     report = Report()
     begin = q.rapid[0][0].points[0] if q.rapid else q.start
     stops = np.array([begin, *(stroke.points[-1] for stroke, _ in q.rapid)])

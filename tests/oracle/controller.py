@@ -36,7 +36,7 @@ def run(program: bytes, machine: Machine) -> list[Item]:
     controller = _Controller(machine)
     items: list[Item] = []
     for block in read_blocks(program):
-        if block.deletable:
+        if block.deletable and (block.gcodes or block.words.keys() & set(AXES)):
             items.append(Event("frame", block.line))
         if block.deletable and machine.delete_blocks:
             continue
@@ -288,9 +288,7 @@ class _Controller:
         minutes = 1 / self.feed if self.feed_mode == 930 and kind == "feed" and self.feed > 0 else 0.0
         if kind == "rapid" or self.feed_mode == 930:
             context = (0.0, *context[1:])
-        move = Motion(
-            kind, self.line, self.position, end, named, arc, machine_frame, context=context, minutes=minutes
-        )
+        move = Motion(kind, self.line, self.position, end, named, arc, machine_frame, context=context, minutes=minutes)
         self.position = end
         return move
 

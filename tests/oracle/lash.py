@@ -36,9 +36,7 @@ def play_bounds(lash: Mapping[str, float], datum: Mapping[str, str] | None = Non
     sides = {name.upper(): side for name, side in (datum or {}).items()}
     if sizes.keys() - set(AXES) or sides.keys() - set(AXES) or any(value < 0 for value in sizes.values()):
         raise ValueError("lash and datum are given by axis letter, lash is not negative")
-    return tuple(
-        (-sizes.get(a, 0.0), 0.0) if sides.get(a, "-") == "+" else (0.0, sizes.get(a, 0.0)) for a in AXES
-    )
+    return tuple((-sizes.get(a, 0.0), 0.0) if sides.get(a, "-") == "+" else (0.0, sizes.get(a, 0.0)) for a in AXES)
 
 
 def play(commands: Iterable[float], actual: float, low: float, high: float) -> list[float]:
@@ -52,9 +50,7 @@ def play(commands: Iterable[float], actual: float, low: float, high: float) -> l
 
 def flank(command: Sequence[float], bounds: Bounds, sides: Sequence[float]) -> Point:
     """Actual start point for side values from 0 (minus flank) to 1 (plus flank), anything between is in the play."""
-    return tuple(
-        c - low - side * (high - low) for c, (low, high), side in zip(command, bounds, sides, strict=True)
-    )
+    return tuple(c - low - side * (high - low) for c, (low, high), side in zip(command, bounds, sides, strict=True))
 
 
 def drive(

@@ -97,8 +97,8 @@ class Motion:
 class Event:
     """Something between moves: ``what`` is tool change (side lost), frame, dwell, stop or end.
 
-    ``value`` is the tool or the seconds; a frame event says that a reader of the program may no longer know the position
-    (work offset, tool length, set position, a deletable block).
+    ``value`` is the tool or the seconds; a frame event says that a reader of the program may no longer know the
+    position (work offset, tool length, set position, a deletable block).
     """
 
     what: str

@@ -309,13 +309,67 @@ def test_unknown_after_home_until_settled() -> None:
 def test_cycles_may_come_out_soft() -> None:
     """Place and depth exact; the way out may miss R by the lash; a shifted hole or depth is found."""
     original = "G21 G90 F100\nG0 Z5\nX0 Y0\nG99 G81 X5 Y5 Z-2 R1\nX10\nX8\nG80\nG0 Z5\nX0\n"
-    good = (
-        "G21 G90 F100\nG0 Z5.6\nZ5\nX0.6 Y0.6\nX0 Y0\nG99 G81 X5.1 Y5.1 Z-2 R1\nX10.1\nX8\nG80\nG0 Z5.1\nX0\n"
-    )
+    good = "G21 G90 F100\nG0 Z5.6\nZ5\nX0.6 Y0.6\nX0 Y0\nG99 G81 X5.1 Y5.1 Z-2 R1\nX10.1\nX8\nG80\nG0 Z5.1\nX0\n"
     assert judge(good, original).ok(1e-6), judge(good, original)
     assert judge(good.replace("X10.1", "X10"), original).feed.value > 0.09
     assert judge(good.replace("Z-2 R1", "Z-2.05 R1"), original).feed.value > 0.04
     assert not judge(good.replace("X8", "X8\nX9"), original).ok()
+
+
+def test_a_change_of_frame_allows_a_settle_but_no_error() -> None:
+    original = "G21 G90 F100\nG0 Z5\nX0 Y0\nG55\nG0 X10 Y10\nG1 Z-1\nG1 X12\n"
+    start = "G21 G90 F100\nG0 Z5.6\nZ5\nX0.6 Y0.6\nX0 Y0\nG55\n"
+    end = "G0 X10 Y10\nG1 Z-0.4\nG1 Z-1\nG1 X10.1\nG1 X12.1\n"
+    assert judge(start + "G0 X10.6 Y10.6\n" + end, original).ok(1e-6)
+    assert not judge(start + "G0 X12.6 Y10.6\n" + end, original).ok()
+    assert not judge(start + end, original).ok()
+
+
+def test_a_feed_from_an_unknown_side_cannot_be_right() -> None:
+    """Whatever is written, some start side spoils it, unless the side was stated."""
+    original = "G21 G90 F100\nG0 Z5\nY0\nG91 G1 X10\n"
+    head = "G21 G90 F100\nG0 Z5.6\nZ5\nY0.6\nY0\nG91\n"
+    for feed in ("G1 X10\n", "G1 X0.1\nG1 X10\n"):
+        assert not judge(head + feed, original).ok()
+    good = (head + "G1 X0.1\nG1 X10\n").encode()
+    assert deviation(original.encode(), good, LASH, PLAIN, known="x").ok(1e-6)
+
+
+@pytest.mark.parametrize("between", ["/M8\n", "M8\n", "(note)\n"])
+def test_what_stands_between_feeds_parts_nothing(between: str) -> None:
+    original = PART.replace("G1 Y10\n", between + "G1 Y10\n")
+    assert judge(GOOD.replace("G1 Y10.1\n", between + "G1 Y10.1\n"), original).ok(1e-6)
+
+
+def test_probe_and_set_zero() -> None:
+    """Zero set on the minus side of a datum + axis: the value takes the shift of that side with it."""
+    original = "G21 G90 F100\nG0 Z5\nX0 Y0\nG38.2 Z-20 F50\nG92 Z0\nG0 Z5\nG1 Z-1 F100\nG0 Z5\n"
+    good = (
+        "G21 G90 F100\nG0 Z5.5\nZ4.9\nX0.6 Y0.6\nX0 Y0\nG38.2 Z-20 F50\nG92 Z-0.1\nG0 Z5\nG1 Z4.9\nG1 Z-1.1 F100\n"
+        "G0 Z5\n"
+    )
+    assert judge(good, original, datum={"z": "+"}).ok(1e-6)
+    assert judge(good.replace("G92 Z-0.1", "G92 Z0"), original, datum={"z": "+"}).feed.value > 0.09
+
+
+def test_one_sided_approach_is_allowed_on_request() -> None:
+    """Holes approached in the minus direction with an overshoot: right for any lash below it."""
+    original = "G21 G90 F100\nG0 Z5\nX0 Y0\nG1 Z-1\nG0 Z5\nX10 Y10\nG1 Z-1\nG0 Z5\n"
+    good = "G21 G90 F100\nG0 Z5.6\nZ5\nX0.6 Y0.6\nX0 Y0\nG1 Z-1\nG0 Z5.05\nX10.4 Y10.4\nX10 Y10\nG1 Z-1\nG0 Z5.05\n"
+    for true in (0.0, 0.05, 0.1):
+        lash = {"x": true, "y": true, "z": 0.05}
+        ends = [
+            worst_of(original.encode(), good.encode(), lash, seeds=range(3), approach=margin).ok(1e-6)
+            for margin in (0.0, 0.4)
+        ]
+        assert ends == [False, True]
+
+
+def test_the_mismatch_of_the_original_may_be_let_off() -> None:
+    original = "G21 G90 F100\nG0 Z0\nX10 Y0\nG3 X0 Y10.0015 I-10\n"
+    round_off = "G21 G90 F100\nG0 Z0\nX10 Y0\nG3 X7.0711 Y7.0711 I-10\nG3 X0 Y10.0015 I-7.0711 J-7.0711\n"
+    reports = [deviation(original.encode(), round_off.encode(), {}, PLAIN, allow_mismatch=x) for x in (False, True)]
+    assert [report.ok() for report in reports] == [False, True]
 
 
 def test_inverse_time_shares_add_up() -> None:

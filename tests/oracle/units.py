@@ -156,11 +156,18 @@ class _Splitter:
             self.close()
             self.learn(self.doubt.unknown(motion.named))
         else:
-            if real:
+            if real and not self.within_feed(stroke):
                 self.open(self.feed_kind(motion)).strokes.append(stroke)
             self.doubt = Doubt(self.doubt.unsure, self.doubt.soft - motion.named, self.doubt.lost)
         if real:
             self.here = stroke.points[-1]
+
+    def within_feed(self, stroke: Stroke) -> bool:
+        """Take a stroke that hardly moves into the running feed: a take-up there settles nothing and parts nothing."""
+        if self.unit is None or self.unit.kind != "feed" or _moves(stroke, HARDLY):
+            return False
+        self.unit.strokes.append(stroke)
+        return True
 
     def feed_kind(self, motion: Motion) -> str:
         alone = motion.arc is None and all(
@@ -170,9 +177,7 @@ class _Splitter:
 
     def add_rapid(self, stroke: Stroke, real: bool) -> None:
         named = stroke.motion.named
-        if self.unit is not None and self.unit.kind == "feed" and not _moves(stroke, HARDLY):
-            # a take-up in the midst of a feed; it settles nothing
-            self.unit.strokes.append(stroke)
+        if self.within_feed(stroke):
             return
         if real:
             self.close()

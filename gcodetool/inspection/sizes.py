@@ -1,0 +1,297 @@
+"""What a caliper will show: predicted sizes and form errors of the recognised shapes, without and with compensation.
+
+Closed forms of the model (friction holds the axes, lash B on both): a round path of radius R has extents 2R - B, flats of
+sqrt(2RB - B^2) after each quadrant and a radius of sqrt(R^2 - B^2/2) on the diagonals.  The figures here come from driving the
+sampled path through the play of each axis, so that start sides, single laps, unequal lash and dragged axes are in them.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+import shapely
+
+from gcodetool.inspection.audit_records import Feature, Flags, Floats, Holding, Ints, Measure, Path, Samples, Shape
+from gcodetool.inspection.lash_path import AxisCase, AxisState, follow, start_state, states_before
+from gcodetool.inspection.toolpath import places
+from gcodetool.machine import Axis, Machine
+
+PLAN = "XY"
+PER_TURN = 1440
+LEAST_SAMPLES = 48
+# walls whose directions differ by less than this are parallel, rad
+PARALLEL = math.radians(0.2)
+# pairs of walls are looked for among at most this many
+MOST_WALLS = 400
+# holes: pairs with the nearest neighbours
+NEIGHBOURS = 2
+Variant = Mapping[str, AxisCase]
+
+
+@dataclass(frozen=True, slots=True)
+class Case:
+    """One way the part may come out: a case for X and Y, and whether dragging by the cut counts."""
+
+    axes: Variant
+    dragged: bool
+
+
+def cases(machine: Machine) -> list[Case]:
+    """Uncompensated; compensated; compensated and held everywhere; compensated with the lash at both ends of its uncertainty."""
+
+    def both(make: object) -> Variant:
+        return {letter: make(machine.axis(letter)) for letter in PLAN}  # type: ignore[operator]
+
+    def true(axis: Axis, sign: int, compensated: bool = True) -> AxisCase:
+        lash = float(axis.lash)
+        off = sign * float(axis.uncertainty or 0)
+        return AxisCase(max(lash + off, 0.0), lash if compensated else None, axis.datum)
+
+    exact = both(lambda axis: true(axis, 0))
+    return [
+        Case(both(lambda axis: true(axis, 0, False)), True),
+        Case(exact, True),
+        Case(exact, False),
+        Case(both(lambda axis: true(axis, 1)), False),
+        Case(both(lambda axis: true(axis, -1)), False),
+    ]
+
+
+class Predictor:
+    """Predicts actual paths of stretches of a program, in every case."""
+
+    def __init__(self, path: Path, machine: Machine, samples: Samples, holdings: Sequence[Holding]) -> None:
+        """Follow the whole program once in each case, so that every stretch begins on its right side."""
+        self.path, self.samples = path, samples
+        self.cases = cases(machine)
+        self._push = {holding.axis: holding.push for holding in holdings}
+        known: dict[tuple[int, AxisCase], tuple[Floats, Ints]] = {}
+        self._before: list[dict[str, tuple[Floats, Ints]]] = []
+        for case in self.cases:
+            for k, letter in enumerate(PLAN):
+                known.setdefault((k, case.axes[letter]), states_before(path, k, case.axes[letter]))
+            self._before.append({letter: known[k, case.axes[letter]] for k, letter in enumerate(PLAN)})
+
+    def pushes(self, letter: str, move: Ints, share: Floats) -> Ints:
+        """Where the cut drags an axis at places on moves."""
+        push = self._push.get(letter)
+        if push is None or not len(push):
+            return np.zeros(len(move), np.int64)
+        at = np.searchsorted(self.samples.move + self.samples.share, move + share)
+        near = np.clip(at, 0, len(push) - 1)
+        earlier = np.clip(at - 1, 0, len(push) - 1)
+        same = self.samples.move[near] == move
+        return np.where(same, push[near], np.where(self.samples.move[earlier] == move, push[earlier], 0))
+
+    def paths(self, move: Ints, share: Floats) -> tuple[Floats, list[Floats], bool]:
+        """Wanted places (n, 2), the actual ones in each case, and whether the cut drags an axis anywhere.
+
+        ``move`` must begin at the start of a move.
+        """
+        wanted = places(self.path, move, share)[:, :2]
+        push = {letter: self.pushes(letter, move, share) for letter in PLAN}
+        found = []
+        for case, before in zip(self.cases, self._before, strict=True):
+            columns = []
+            for k, letter in enumerate(PLAN):
+                actual, side = before[letter]
+                state = AxisState(float(actual[move[0]]), int(side[move[0]]))
+                drag = push[letter] if case.dragged else None
+                columns.append(follow(wanted[:, k], case.axes[letter], state, drag)[0])
+            found.append(np.column_stack(columns))
+        return wanted, found, any(bool(values.any()) for values in push.values())
+
+    def ends(self, move: int) -> tuple[Floats, list[Floats]]:
+        """Wanted and actual place at the end of a move."""
+        found = [np.array([before[letter][0][move + 1] for letter in PLAN]) for before in self._before]
+        return self.path.end[move, :2], found
+
+
+def predict(shapes: Sequence[Shape], predictor: Predictor) -> list[Feature]:
+    """The measures of every shape, worst first."""
+    found: list[Feature] = []
+    walls: list[tuple[Shape, list[float], bool]] = []
+    for shape in shapes:
+        if shape.kind in ("bore", "boss"):
+            found.append(_round(shape, predictor))
+        elif shape.kind == "arc":
+            found.append(_arc(shape, predictor))
+        elif shape.kind in ("wall", "slot"):
+            feature, place, dragged = _wall(shape, predictor)
+            found.append(feature)
+            walls.append((shape, place, dragged))
+    found.extend(_widths([each for each in walls if each[0].kind == "wall"][:MOST_WALLS]))
+    found.extend(_hole_pairs([shape for shape in shapes if shape.kind == "hole"], predictor))
+    return sorted(found, key=lambda feature: (-feature.worst, feature.lines))
+
+
+def _measure(name: str, intended: float, values: Sequence[float]) -> Measure:
+    after = values[1:]
+    return Measure(name, intended, values[0], values[1], min(after), max(after))
+
+
+def _stretch(shape: Shape, path: Path) -> tuple[Ints, Floats]:
+    """Samples along the moves of a shape: quadrant points and even steps."""
+    moves, shares = [], []
+    for k in shape.moves:
+        sweep = float(path.sweep[k]) if path.plane[k] == 1 else 0.0
+        count = max(LEAST_SAMPLES if len(shape.moves) < 12 else 4, math.ceil(PER_TURN * abs(sweep) / (2.0 * math.pi)))
+        share = np.linspace(0.0, 1.0, count + 1)
+        if sweep:
+            quadrant = (np.arange(-40, 41) * 0.5 * math.pi - path.angle[k]) / sweep
+            share = np.union1d(share, quadrant[(quadrant > 0.0) & (quadrant < 1.0)])
+        moves.append(np.full(len(share), k, np.int64))
+        shares.append(share)
+    return np.concatenate(moves), np.concatenate(shares)
+
+
+# ---- round ones --------------------------------------------------------------------------------------------------------
+
+
+def _round(shape: Shape, predictor: Predictor) -> Feature:
+    move, share = _stretch(shape, predictor.path)
+    wanted, actual, dragged = predictor.paths(move, share)
+    last = _last_turn(wanted, shape)
+    sign = 1.0 if shape.kind == "bore" else -1.0
+    walls = [_Ring(part[last], sign * shape.cutter) for part in (wanted, *actual)]
+    size = 2.0 * (shape.radius + sign * shape.cutter)
+    rows = [_measure("diameter X", size, [ring.wide for ring in walls[1:]])]
+    rows.append(_measure("diameter Y", size, [ring.tall for ring in walls[1:]]))
+    rows.append(_measure("diameter 45 deg", size, [ring.across(0.25 * math.pi) for ring in walls[1:]]))
+    rows.append(_measure("diameter 135 deg", size, [ring.across(0.75 * math.pi) for ring in walls[1:]]))
+    noise = walls[0].out_of_round
+    rows.append(_measure("out of round", 0.0, [max(ring.out_of_round - noise, 0.0) for ring in walls[1:]]))
+    radius = shape.radius if shape.kind == "bore" else 0.5 * size
+    for k, letter in enumerate(PLAN):
+        lengths = [_flat(radius, case.axes[letter]) for case in predictor.cases]
+        rows.append(_measure(f"flat across {letter}", 0.0, lengths))
+    name = f"{shape.kind} {size:.3f} at X{shape.centre[0]:.3f} Y{shape.centre[1]:.3f}"
+    return Feature(shape.kind, name, shape.lines, shape.centre, shape.depth, tuple(rows), _drag_words(dragged))
+
+
+def _last_turn(wanted: Floats, shape: Shape) -> Flags:
+    """Marks the samples of the last whole turn."""
+    angle = np.unwrap(np.arctan2(wanted[:, 1] - shape.centre[1], wanted[:, 0] - shape.centre[0]))
+    mark: Flags = np.abs(angle - angle[-1]) <= 2.0 * math.pi + 1e-9
+    return mark
+
+
+class _Ring:
+    """The wall that a closed path leaves at a distance from it (negative: inside)."""
+
+    def __init__(self, path: Floats, offset: float) -> None:
+        wall = shapely.Polygon(path).buffer(0.0).buffer(offset, quad_segs=180)
+        self._wall = wall
+        x0, y0, x1, y1 = wall.bounds if not wall.is_empty else (0.0, 0.0, 0.0, 0.0)
+        self.wide, self.tall = x1 - x0, y1 - y0
+        self._middle = (0.5 * (x0 + x1), 0.5 * (y0 + y1))
+
+    def across(self, angle: float) -> float:
+        """The diameter through the middle at an angle."""
+        x, y = self._middle
+        reach = self.wide + self.tall
+        dx, dy = reach * math.cos(angle), reach * math.sin(angle)
+        return float(shapely.LineString([(x - dx, y - dy), (x + dx, y + dy)]).intersection(self._wall).length)
+
+    @property
+    def out_of_round(self) -> float:
+        """Largest minus smallest radius about the middle."""
+        points = shapely.get_coordinates(self._wall)
+        if not len(points):
+            return 0.0
+        radius = np.hypot(points[:, 0] - self._middle[0], points[:, 1] - self._middle[1])
+        return float(radius.max() - radius.min())
+
+
+def _flat(radius: float, case: AxisCase) -> float:
+    """Length of the flat after a quadrant: sqrt(2RB - B^2) with the lash that is left."""
+    left = case.lash - (case.compensated or 0.0)
+    return math.sqrt(max(2.0 * radius * left - left * left, 0.0)) if 0.0 < left < radius else 0.0
+
+
+def _arc(shape: Shape, predictor: Predictor) -> Feature:
+    move, share = _stretch(shape, predictor.path)
+    wanted, actual, dragged = predictor.paths(move, share)
+    ray = wanted - np.array(shape.centre)
+    ray /= np.maximum(np.hypot(ray[:, 0], ray[:, 1]), 1e-12)[:, None]
+    outward = [((part - wanted) * ray).sum(axis=1) for part in actual]
+    middle = len(share) // 2
+    size = shape.radius + (shape.cutter if shape.side * predictor.path.sweep[shape.moves[0]] < 0.0 else -shape.cutter)
+    rows = [
+        _measure("radius at its middle", size, [size + float(off[middle]) for off in outward]),
+        _measure("largest error of form", 0.0, [float(np.max(np.abs(off))) for off in outward]),
+    ]
+    name = f"arc radius {size:.3f} about X{shape.centre[0]:.3f} Y{shape.centre[1]:.3f}"
+    return Feature("arc", name, shape.lines, shape.centre, shape.depth, tuple(rows), _drag_words(dragged))
+
+
+def _drag_words(dragged: bool) -> str:
+    return "the cut drags an axis across its lash here" if dragged else ""
+
+
+# ---- straight ones -------------------------------------------------------------------------------------------------------
+
+
+def _wall(shape: Shape, predictor: Predictor) -> tuple[Feature, list[float], bool]:
+    """Where a wall (or the middle of a slot) comes out, and how much it bends; with the place in each case."""
+    move, share = _stretch(shape, predictor.path)
+    wanted, actual, dragged = predictor.paths(move, share)
+    normal = np.array(shape.normal)
+    off = [((part - wanted) * normal).sum(axis=1) for part in actual]
+    surface = float(wanted[-1] @ normal) + (shape.cutter if shape.kind == "wall" else 0.0)
+    place = [surface + float(each[-1]) for each in off]
+    rows = [_measure(_position_name(shape), surface, place)]
+    bend = [float(each.max() - each.min()) for each in off]
+    if max(bend) > 1e-4:
+        rows.append(_measure("step along it", 0.0, bend))
+    if shape.kind == "slot":
+        rows.append(_measure("width", 2.0 * shape.cutter, [2.0 * shape.cutter + value for value in bend]))
+    middle = wanted[len(wanted) // 2] + normal * (shape.cutter if shape.kind == "wall" else 0.0)
+    at = float(middle[0]), float(middle[1])
+    name = f"{shape.kind} at X{at[0]:.3f} Y{at[1]:.3f}"
+    return Feature(shape.kind, name, shape.lines, at, shape.depth, tuple(rows), _drag_words(dragged)), place, dragged
+
+
+def _position_name(shape: Shape) -> str:
+    """Which coordinate the position of a wall is."""
+    nx, ny = shape.normal
+    if abs(ny) < 1e-6:
+        return "position X" if nx > 0.0 else "position X (counted in minus)"
+    if abs(nx) < 1e-6:
+        return "position Y" if ny > 0.0 else "position Y (counted in minus)"
+    return "distance from program zero"
+
+
+def _widths(walls: Sequence[tuple[Shape, list[float], bool]]) -> Iterator[Feature]:
+    """Widths between parallel walls that look at each other, each wall with its nearest."""
+    for k, (shape, place, dragged) in enumerate(walls):
+        best: tuple[float, int] | None = None
+        for j, (other, _, _) in enumerate(walls):
+            gap = _gap(shape, other)
+            if j != k and gap is not None and (best is None or gap < best[0]):
+                best = gap, j
+        if best is None or best[1] < k and _gap_partner(walls, best[1]) == k:
+            continue
+        other, there, dragged_there = walls[best[1]]
+        sign = 1.0 if best[0] > 0.0 else -1.0
+        yield _width(shape, other, [abs_ + other_ for abs_, other_ in zip(place, there, strict=True)], dragged or dragged_there, sign)
+
+
+def _gap_partner(walls: Sequence[tuple[Shape, list[float], bool]], k: int) -> int:
+    gaps = [(gap, j) for j, (other, _, _) in enumerate(walls) if j != k and (gap := _gap(walls[k][0], other)) is not None]
+    return min(gaps)[1] if gaps else -1
+
+
+def _gap(one: Shape, other: Shape) -> float | None:
+    raise NotImplementedError
+
+
+def _width(one: Shape, other: Shape, values: Sequence[float], dragged: bool, sign: float) -> Feature:
+    raise NotImplementedError
+
+
+def _hole_pairs(holes: Sequence[Shape], predictor: Predictor) -> Iterator[Feature]:
+    raise NotImplementedError
