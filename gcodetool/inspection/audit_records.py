@@ -498,7 +498,7 @@ class AxisEnvelope:
 
 @dataclass(frozen=True, slots=True)
 class MoveRow:
-    """One feed motion in figures; angles in degrees."""
+    """One feed motion in figures: means over its cutting length; angles in degrees, ``removed`` in mm^3, nan for none."""
 
     line: int
     kind: str
@@ -509,7 +509,7 @@ class MoveRow:
     last_angle: float
     width: float
     depth: float
-    area: float
+    removed: float
     chip_load: float
     mean_chip: float
     along: float

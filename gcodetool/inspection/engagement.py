@@ -11,11 +11,22 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from gcodetool.inspection.audit_records import FLAT, Cutters, Engagement, Flags, Floats, Ints, Job, Path, Samples
-from gcodetool.inspection.audit_records import Slices, StockTaken
+from gcodetool.inspection.audit_records import (
+    FLAT,
+    Cutters,
+    Engagement,
+    Flags,
+    Floats,
+    Ints,
+    Job,
+    Path,
+    Samples,
+    Slices,
+    StockTaken,
+)
 from gcodetool.inspection.clearing import NO_HEIGHT, Clearing, Grid
 from gcodetool.inspection.stock import Outline
-from gcodetool.inspection.swept import PI, RC, X0, X1, Y0, Y1, Z0, Z1, Circles, covered, gaps, radius_at
+from gcodetool.inspection.swept import PI, RC, X0, X1, Y0, Y1, Circles, covered, gaps, radius_at
 from gcodetool.inspection.toolpath import cut_up, directions, places, vertical_moves
 
 # material thinner than this, measured across the feed, does not count as cut: rounding of a program, spring of a cutter
@@ -29,6 +40,8 @@ PIECE = 4.0
 # a slice is at least this thick, and at least this share of its height above the tip
 THIN, GROWTH = 0.005, 0.35
 BLOCK = 512
+# the radius of a point, mm
+SPECK = 1e-3
 PROBES = 4096
 # a motion that falls by less than this share of its length cuts with its sides only
 STEEP = 0.02
@@ -36,14 +49,39 @@ RINGS = 4
 """The end face of a plunge is looked at on this many rings of equal area."""
 
 
-def engage(path: Path, job: Job, stock: StockTaken) -> Engagement:
-    """The engagement of every feed motion, and of rapids below the top of the stock; needs three corners of stock.
+def engage(path: Path, job: Job, stock: StockTaken) -> tuple[Engagement, Remains]:
+    """The engagement of every feed motion and of rapids below the top of the stock, and what is left in the end.
 
     Rapids remove nothing.  Moves of rotary axes, and rapids from unknown places, are left out.
     """
-    cutters = Cutters.of(job.cutters)
-    follower = _Follower(path, cutters, stock)
-    return follower.run()
+    if len(stock.outline) < 3 or not len(chosen_moves(path, stock.top)):
+        return _nothing(), Remains(None)
+    follower = _Follower(path, Cutters.of(job.cutters), stock)
+    return follower.run(), Remains(follower)
+
+
+def _nothing() -> Engagement:
+    none, some = np.empty(0), np.empty(0, np.int64)
+    flags = np.empty(0, np.bool_)
+    samples = Samples(some, none, none, none, none, none, none, none, flags)
+    return Engagement(samples, Slices(some, none, none, none, none, none), flags, none, none)
+
+
+class Remains:
+    """The stock after the whole program."""
+
+    def __init__(self, follower: _Follower | None) -> None:
+        """Keep the follower that has run."""
+        self._follower = follower
+
+    def stands(self, x: Floats, y: Floats, height: Floats) -> Flags:
+        """True for points (columns) at which material still stands at a height."""
+        found = np.zeros(len(x), np.bool_)
+        if self._follower is None:
+            return found
+        for rows in _split(np.arange(len(x))):
+            found[rows] = self._follower.stands(x[rows], y[rows], height[rows])
+        return found
 
 
 def chosen_moves(path: Path, top: float) -> Ints:
@@ -200,6 +238,16 @@ class _Follower:
                 for sample, first, last, low, high, _ in self._rise(probes.of(upright)):
                     share = (last - first) / (2.0 * PI * RINGS) * (high - low)
                     np.add.at(self.volume, sample, share * PI * self.cutters.radius[self.tool[self.piece_of[sample]]] ** 2)
+
+    def stands(self, x: Floats, y: Floats, height: Floats) -> Flags:
+        """True for points with material, after everything; a point is a very small circle."""
+        count, late = len(x), np.full(len(x), len(self.pieces), np.int64)
+        found = np.zeros(count, np.bool_)
+        for ahead in (1.0, -1.0):
+            circles = Circles(x, y, np.full(count, ahead), np.zeros(count), np.full(count, SPECK))
+            row, _, _ = _Asked(self, circles, late, height).gaps(height)
+            found[row] = True
+        return found & (height < self.top - NO_HEIGHT)
 
     # ---- one probe ------------------------------------------------------------------------------------------------
 

@@ -15,7 +15,19 @@ import math
 import numpy as np
 
 from gcodetool.inspection.audit_records import (
-    Cut, Cutters, Flags, Floats, Forces, Hold, Holding, Ints, Label, Material, Path, Samples, Slices,
+    Cut,
+    Cutters,
+    Flags,
+    Floats,
+    Forces,
+    Hold,
+    Holding,
+    Ints,
+    Label,
+    Material,
+    Path,
+    Samples,
+    Slices,
 )  # fmt: skip
 from gcodetool.machine import Axis
 

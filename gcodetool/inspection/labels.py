@@ -10,7 +10,18 @@ from __future__ import annotations
 import numpy as np
 
 from gcodetool.inspection.audit_records import (
-    Cut, Cutters, Engagement, Flags, Floats, Ints, Kind, Label, Labels, Path, Samples, Slices,
+    Cut,
+    Cutters,
+    Engagement,
+    Flags,
+    Floats,
+    Ints,
+    Kind,
+    Label,
+    Labels,
+    Path,
+    Samples,
+    Slices,
 )  # fmt: skip
 
 # a cut is a slot where the smaller side has at least this share of the larger: 0.83 D of radial width or more

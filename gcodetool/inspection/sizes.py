@@ -8,26 +8,23 @@ sampled path through the play of each axis, so that start sides, single laps, un
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 import shapely
 
-from gcodetool.inspection.audit_records import Feature, Flags, Floats, Holding, Ints, Measure, Path, Samples, Shape
-from gcodetool.inspection.lash_path import AxisCase, AxisState, follow, start_state, states_before
+from gcodetool.inspection.audit_records import Feature, Flags, Floats, Holding, Ints, Path, Samples, Shape
+from gcodetool.inspection.lash_path import AxisCase, AxisState, follow, states_before
+from gcodetool.inspection.spacing import drag_words, hole_pairs, measure, widths
 from gcodetool.inspection.toolpath import places
 from gcodetool.machine import Axis, Machine
 
 PLAN = "XY"
 PER_TURN = 1440
 LEAST_SAMPLES = 48
-# walls whose directions differ by less than this are parallel, rad
-PARALLEL = math.radians(0.2)
-# pairs of walls are looked for among at most this many
-MOST_WALLS = 400
-# holes: pairs with the nearest neighbours
-NEIGHBOURS = 2
+# pairs are looked for among at most this many
+MOST_WALLS, MOST_HOLES = 400, 2000
 Variant = Mapping[str, AxisCase]
 
 
@@ -42,8 +39,8 @@ class Case:
 def cases(machine: Machine) -> list[Case]:
     """Uncompensated; compensated; compensated and held everywhere; compensated with the lash at both ends of its uncertainty."""
 
-    def both(make: object) -> Variant:
-        return {letter: make(machine.axis(letter)) for letter in PLAN}  # type: ignore[operator]
+    def both(make: Callable[[Axis], AxisCase]) -> Variant:
+        return {letter: make(machine.axis(letter)) for letter in PLAN}
 
     def true(axis: Axis, sign: int, compensated: bool = True) -> AxisCase:
         lash = float(axis.lash)
@@ -123,14 +120,10 @@ def predict(shapes: Sequence[Shape], predictor: Predictor) -> list[Feature]:
             feature, place, dragged = _wall(shape, predictor)
             found.append(feature)
             walls.append((shape, place, dragged))
-    found.extend(_widths([each for each in walls if each[0].kind == "wall"][:MOST_WALLS]))
-    found.extend(_hole_pairs([shape for shape in shapes if shape.kind == "hole"], predictor))
+    found.extend(widths([each for each in walls if each[0].kind == "wall"][:MOST_WALLS]))
+    holes = [shape for shape in shapes if shape.kind == "hole"][:MOST_HOLES]
+    found.extend(hole_pairs(holes, [predictor.ends(shape.moves[-1]) for shape in holes]))
     return sorted(found, key=lambda feature: (-feature.worst, feature.lines))
-
-
-def _measure(name: str, intended: float, values: Sequence[float]) -> Measure:
-    after = values[1:]
-    return Measure(name, intended, values[0], values[1], min(after), max(after))
 
 
 def _stretch(shape: Shape, path: Path) -> tuple[Ints, Floats]:
@@ -158,18 +151,18 @@ def _round(shape: Shape, predictor: Predictor) -> Feature:
     sign = 1.0 if shape.kind == "bore" else -1.0
     walls = [_Ring(part[last], sign * shape.cutter) for part in (wanted, *actual)]
     size = 2.0 * (shape.radius + sign * shape.cutter)
-    rows = [_measure("diameter X", size, [ring.wide for ring in walls[1:]])]
-    rows.append(_measure("diameter Y", size, [ring.tall for ring in walls[1:]]))
-    rows.append(_measure("diameter 45 deg", size, [ring.across(0.25 * math.pi) for ring in walls[1:]]))
-    rows.append(_measure("diameter 135 deg", size, [ring.across(0.75 * math.pi) for ring in walls[1:]]))
+    rows = [measure("diameter X", size, [ring.wide for ring in walls[1:]])]
+    rows.append(measure("diameter Y", size, [ring.tall for ring in walls[1:]]))
+    rows.append(measure("diameter 45 deg", size, [ring.across(0.25 * math.pi) for ring in walls[1:]]))
+    rows.append(measure("diameter 135 deg", size, [ring.across(0.75 * math.pi) for ring in walls[1:]]))
     noise = walls[0].out_of_round
-    rows.append(_measure("out of round", 0.0, [max(ring.out_of_round - noise, 0.0) for ring in walls[1:]]))
+    rows.append(measure("out of round", 0.0, [max(ring.out_of_round - noise, 0.0) for ring in walls[1:]]))
     radius = shape.radius if shape.kind == "bore" else 0.5 * size
     for k, letter in enumerate(PLAN):
         lengths = [_flat(radius, case.axes[letter]) for case in predictor.cases]
-        rows.append(_measure(f"flat across {letter}", 0.0, lengths))
+        rows.append(measure(f"flat across {letter}", 0.0, lengths))
     name = f"{shape.kind} {size:.3f} at X{shape.centre[0]:.3f} Y{shape.centre[1]:.3f}"
-    return Feature(shape.kind, name, shape.lines, shape.centre, shape.depth, tuple(rows), _drag_words(dragged))
+    return Feature(shape.kind, name, shape.lines, shape.centre, shape.depth, tuple(rows), drag_words(dragged))
 
 
 def _last_turn(wanted: Floats, shape: Shape) -> Flags:
@@ -221,15 +214,11 @@ def _arc(shape: Shape, predictor: Predictor) -> Feature:
     middle = len(share) // 2
     size = shape.radius + (shape.cutter if shape.side * predictor.path.sweep[shape.moves[0]] < 0.0 else -shape.cutter)
     rows = [
-        _measure("radius at its middle", size, [size + float(off[middle]) for off in outward]),
-        _measure("largest error of form", 0.0, [float(np.max(np.abs(off))) for off in outward]),
+        measure("radius at its middle", size, [size + float(off[middle]) for off in outward]),
+        measure("largest error of form", 0.0, [float(np.max(np.abs(off))) for off in outward]),
     ]
     name = f"arc radius {size:.3f} about X{shape.centre[0]:.3f} Y{shape.centre[1]:.3f}"
-    return Feature("arc", name, shape.lines, shape.centre, shape.depth, tuple(rows), _drag_words(dragged))
-
-
-def _drag_words(dragged: bool) -> str:
-    return "the cut drags an axis across its lash here" if dragged else ""
+    return Feature("arc", name, shape.lines, shape.centre, shape.depth, tuple(rows), drag_words(dragged))
 
 
 # ---- straight ones -------------------------------------------------------------------------------------------------------
@@ -243,16 +232,16 @@ def _wall(shape: Shape, predictor: Predictor) -> tuple[Feature, list[float], boo
     off = [((part - wanted) * normal).sum(axis=1) for part in actual]
     surface = float(wanted[-1] @ normal) + (shape.cutter if shape.kind == "wall" else 0.0)
     place = [surface + float(each[-1]) for each in off]
-    rows = [_measure(_position_name(shape), surface, place)]
+    rows = [measure(_position_name(shape), surface, place)]
     bend = [float(each.max() - each.min()) for each in off]
     if max(bend) > 1e-4:
-        rows.append(_measure("step along it", 0.0, bend))
+        rows.append(measure("step along it", 0.0, bend))
     if shape.kind == "slot":
-        rows.append(_measure("width", 2.0 * shape.cutter, [2.0 * shape.cutter + value for value in bend]))
+        rows.append(measure("width", 2.0 * shape.cutter, [2.0 * shape.cutter + value for value in bend]))
     middle = wanted[len(wanted) // 2] + normal * (shape.cutter if shape.kind == "wall" else 0.0)
     at = float(middle[0]), float(middle[1])
     name = f"{shape.kind} at X{at[0]:.3f} Y{at[1]:.3f}"
-    return Feature(shape.kind, name, shape.lines, at, shape.depth, tuple(rows), _drag_words(dragged)), place, dragged
+    return Feature(shape.kind, name, shape.lines, at, shape.depth, tuple(rows), drag_words(dragged)), place, dragged
 
 
 def _position_name(shape: Shape) -> str:
@@ -263,35 +252,3 @@ def _position_name(shape: Shape) -> str:
     if abs(nx) < 1e-6:
         return "position Y" if ny > 0.0 else "position Y (counted in minus)"
     return "distance from program zero"
-
-
-def _widths(walls: Sequence[tuple[Shape, list[float], bool]]) -> Iterator[Feature]:
-    """Widths between parallel walls that look at each other, each wall with its nearest."""
-    for k, (shape, place, dragged) in enumerate(walls):
-        best: tuple[float, int] | None = None
-        for j, (other, _, _) in enumerate(walls):
-            gap = _gap(shape, other)
-            if j != k and gap is not None and (best is None or gap < best[0]):
-                best = gap, j
-        if best is None or best[1] < k and _gap_partner(walls, best[1]) == k:
-            continue
-        other, there, dragged_there = walls[best[1]]
-        sign = 1.0 if best[0] > 0.0 else -1.0
-        yield _width(shape, other, [abs_ + other_ for abs_, other_ in zip(place, there, strict=True)], dragged or dragged_there, sign)
-
-
-def _gap_partner(walls: Sequence[tuple[Shape, list[float], bool]], k: int) -> int:
-    gaps = [(gap, j) for j, (other, _, _) in enumerate(walls) if j != k and (gap := _gap(walls[k][0], other)) is not None]
-    return min(gaps)[1] if gaps else -1
-
-
-def _gap(one: Shape, other: Shape) -> float | None:
-    raise NotImplementedError
-
-
-def _width(one: Shape, other: Shape, values: Sequence[float], dragged: bool, sign: float) -> Feature:
-    raise NotImplementedError
-
-
-def _hole_pairs(holes: Sequence[Shape], predictor: Predictor) -> Iterator[Feature]:
-    raise NotImplementedError

@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from gcodetool.errors import SheetError
-from gcodetool.inspection.audit_records import Cutter, Floats, Flags, Ints, Job, Path
+from gcodetool.inspection.audit_records import Cutter, Flags, Floats, Ints, Job, Path
 from gcodetool.inspection.swept import A0, COLUMNS, CX, CY, RC, SWEEP, TOOL, X0, X1, Y0, Y1, Z0, Z1
 from gcodetool.motion.controller import Controller
 from gcodetool.motion.moves import ORDER, Event, Move, Setup

@@ -300,7 +300,7 @@ class _Fleet:
             _Corner(base.follower.copy(sides), base.sink.copy(), base.done) for sides in self._sides if sides not in alive
         ]
         for corner in self._corners:
-            corner.follower.lose(event.at, event.letters)
+            corner.follower.lose(event.at, event.letters, kept=event.what == "tool change")
         self._at = event.at
 
 
@@ -398,7 +398,7 @@ def _uncompensated(blocks: Iterable[Block], machine: Machine, setup: Setup, stat
     for item in Controller(setup).run(blocks):
         if isinstance(item, Event):
             if item.what in ("tool change", "home"):
-                follower.lose(item.at, item.letters)
+                follower.lose(item.at, item.letters, kept=item.what == "tool change")
             before, before_actual = [], []
             continue
         want, have = intended(item), list(follower.drive(item))

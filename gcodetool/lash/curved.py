@@ -7,7 +7,7 @@ pieces follow it.  Inside a piece the shift is constant, and a shifted arc is th
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from gcodetool.lash.arc_pieces import Cut, Piece, cut_arc, cut_long
 from gcodetool.lash.knowledge import AxisKnowledge
@@ -31,21 +31,14 @@ from gcodetool.program.rewrite import Word, join_words, new_line, with_word, wit
 
 @dataclass(frozen=True, slots=True)
 class _Task:
-    """One arc block on its way out: the block, its arc, where each axis ends, decimals of split points."""
+    """One arc block on its way out: the block, its arc, where each axis ends and begins, decimals of split points."""
 
     run: Running
     command: Command
     move: ArcMove
     goal: dict[str, int]
     begin: dict[str, int]
-
-    @property
-    def places(self) -> int:
-        """Decimals of split points and centres: those of the grid, of the block's words and of the start."""
-        run, command = self.run, self.command
-        words = [decimals_of(command.number(a)) for a in "XYZIJKR" if command.has(a)]
-        stands = [run.axes[a].decimals for a in (*self.plane, *self.goal) if not run.axes[a].rotary]
-        return min(max(run.least(command.after.units == "G20"), *words, *stands), DEEPEST_DECIMALS)
+    places: int = 0
 
     @property
     def plane(self) -> tuple[str, str]:
@@ -92,6 +85,14 @@ def _check_known(run: Running, command: Command, goal: Mapping[str, int]) -> Non
             raise command.refusal(command.block.text.strip()[:40], reason, way_out)
 
 
+def _places(task: _Task) -> int:
+    """Decimals of split points and centres: those of the grid, of the block's words and of the start."""
+    run, command = task.run, task.command
+    words = [decimals_of(command.number(a)) for a in "XYZIJKR" if command.has(a)]
+    stands = [run.axes[a].decimals for a in (*task.plane, *task.goal) if not run.axes[a].rotary]
+    return min(max(run.least(command.after.units == "G20"), *words, *stands), DEEPEST_DECIMALS)
+
+
 def _write(task: _Task) -> None:
     run, command = task.run, task.command
     moved = {a: run.axes[a] for a in (*task.plane, *task.goal) if not run.axes[a].idle}
@@ -99,6 +100,8 @@ def _write(task: _Task) -> None:
     pieces = cut.pieces
     if len(pieces) > 1 and command.has("R"):
         pieces = cut_long(pieces, task.move.arc.sweep)
+    if len(pieces) > 1:
+        task = replace(task, places=_places(task))
     texts = run.reseat(command)
     texts += _take_up(task, pieces[0], first=True, in_air=not texts)
     last: list[Word] = []

@@ -11,16 +11,21 @@ from collections.abc import Callable, Collection
 from typing import NamedTuple
 
 from gcodetool.motion.modal import ModalState
-from gcodetool.program.rewrite import Look, Word, new_line
+from gcodetool.program.rewrite import Look, Word, look_of, new_line
 
 
 class Slot(NamedTuple):
-    """The place after a rapid: the modal state that holds there and how a line there is written."""
+    """The place after a rapid: the modal state that holds there, and the rapid, whose look a line there copies."""
 
     state: ModalState
-    look: Look
+    pieces: list[str]
+    blank: str
     ending: str
-    line: int
+
+    @property
+    def look(self) -> Look:
+        """How a line in the slot is written."""
+        return look_of(self.pieces, "".join(self.pieces[1::3]).islower(), self.blank)
 
 
 class Outflow:

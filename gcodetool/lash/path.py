@@ -93,12 +93,12 @@ class Follower:
         other._command, other._off = list(self._command), list(self._off)
         return other
 
-    def lose(self, at: Sequence[int], letters: str) -> None:
+    def lose(self, at: Sequence[int], letters: str, kept: bool = False) -> None:
         """Put these axes on their unknown side again, the command standing at ``at``.
 
-        An axis that is not moved by what loses its side is taken to be where it was: nobody can say better.
+        Until it moves, such an axis counts as where its command is; with ``kept`` as where it was, unless it has been moved.
         """
-        self._note_offsets(at, letters)
+        self._note_offsets(at, letters, kept)
         for k in range(6):
             if ORDER[k] in letters and k not in self._lashed:
                 self.actual[k] = at[k] / QUANTA_PER_MM
@@ -106,11 +106,11 @@ class Follower:
                 self.actual[k] = at[k] / QUANTA_PER_MM - self._shift(k, self.sides.get(ORDER[k], -1))
                 self.loose.add(k)
 
-    def _note_offsets(self, at: Sequence[int], letters: str) -> None:
+    def _note_offsets(self, at: Sequence[int], letters: str, kept: bool) -> None:
         for k in self._lashed:
             if ORDER[k] in letters:
                 stood = abs(at[k] / QUANTA_PER_MM - self._command[k]) <= CONTACT
-                if not stood:
+                if not stood or not kept:
                     self._off[k] = 0.0
                 elif k not in self.loose:
                     self._off[k] = self.actual[k] - self._command[k]

@@ -1,7 +1,7 @@
-"""A short way for the commonest block: a straight feed in G90 that turns no axis.
+"""A short way for the commonest blocks: rapids, and feeds and arcs in G90 that turn no axis.
 
-It takes a block only where ``straight.feed`` would do no more than shift its targets, and then does just that; every other
-block goes the ordinary way.  A property test holds both ways to the same output and state.
+It takes a block only where ``straight`` and ``curved`` would do no more than shift its targets, and then does just that; every
+other block goes the ordinary way.  A property test holds both ways to the same output and state.
 
 Whether an axis turns is seen from floats: reading a decimal of up to 15 digits as a float keeps order and equality.  What is
 written is made from exact integers, as everywhere.
@@ -9,62 +9,31 @@ written is made from exact integers, as everywhere.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Iterable
 from typing import NamedTuple
 
-from gcodetool.lash.knowledge import AxisKnowledge
 from gcodetool.lash.running import Running
-from gcodetool.motion.modal import g_words, step
+from gcodetool.lash.track import Track, in_one_quadrant, shifted_text
+from gcodetool.motion.dialect import CENTRE_LETTER, PLANE_AXES
+from gcodetool.motion.modal import ModalState, g_words, step
+from gcodetool.motion.targets import LOOSEST_MISMATCH_MM
 from gcodetool.program.blocks import Block
-from gcodetool.program.numbers import INCH_DIGIT, MM_DIGIT, QUANTA_PER_MM, decimals_of, digits, to_quanta
 from gcodetool.program.words import WORD
 
-_LETTERS = frozenset("NGFXYZABC")
-_FEED_WORDS = frozenset({"1", "01", "1.", "001"})
+_LETTERS = frozenset("NGFXYZABCIJK")
+_MOTIONS = {"0": "G0", "00": "G0", "1": "G1", "01": "G1", "2": "G2", "02": "G2", "3": "G3", "03": "G3"}
 _LONGEST = 15
-_POWER = tuple(10**k for k in range(32))
-_MOTIONS = frozenset({"G0", "G1", "G2", "G3"})
-_QUANTA_PER_INCH = 254 * 10**9
-
-
-class _Track:
-    """One axis as the short way sees it: side, farthest place in program units, last word, digits of its shift."""
-
-    __slots__ = ("axis", "far", "last", "places", "side", "step")
-
-    def __init__(self, axis: AxisKnowledge) -> None:
-        self.axis = axis
-        self.last = ""
-        self.far = 0.0
-        self.side = self.step = self.places = 0
-
-    def read(self, inch: bool, decimals: int) -> None:
-        """Take over what is known of the axis."""
-        axis = self.axis
-        in_inches = inch and not axis.rotary
-        # side 2 lets every target pass; side 0, where a turn cannot be judged, lets none
-        self.side = (axis.side if axis.framed else 0) if axis.mm_lash else 2
-        self.far = axis.extreme / (_QUANTA_PER_INCH if in_inches else QUANTA_PER_MM)
-        self.places = decimals + in_inches
-        self.step = axis.shifts[in_inches][axis.side] // (INCH_DIGIT if in_inches else MM_DIGIT)[self.places]
-
-    def tell(self, inch: bool) -> None:
-        """Hand over the last word that went the short way."""
-        axis = self.axis
-        in_inches = inch and not axis.rotary
-        axis.position = axis.extreme = to_quanta(self.last, INCH_DIGIT if in_inches else MM_DIGIT)
-        axis.decimals = max(axis.decimals, decimals_of(self.last))
-        axis.shift = axis.shifts[in_inches][axis.side]
-        axis.framed = True
-        self.last = ""
+_Found = list[tuple[Track, int, str, float]]
 
 
 class _Plan(NamedTuple):
-    """Where the words of a block with certain letters stand; 0 where there is none."""
+    """Where the words of a block with certain letters stand; 0 where there is none.  ``centre`` are I, J and K."""
 
     g: int
     f: int
-    axes: tuple[tuple[_Track, int], ...]
+    axes: tuple[tuple[Track, int], ...]
+    centre: dict[str, int]
     letters: tuple[str, ...]
 
 
@@ -77,7 +46,7 @@ class Quick:
         self._ordinary = ordinary
         self._is_open = is_open
         self._plans: dict[str, _Plan | None] = {}
-        self._tracks: dict[str, _Track] = {}
+        self._tracks: dict[str, Track] = {}
         self._inch = False
 
     def stream(self, blocks: Iterable[Block]) -> None:
@@ -96,6 +65,8 @@ class Quick:
                         out.write(text)
                     else:
                         out.put(text, plan.letters)
+                    if run.state.motion == "G0":
+                        run.open_slot(run.state, pieces, block.ending)
                     continue
             self._end()
             self._ordinary(block)
@@ -106,7 +77,7 @@ class Quick:
         """Take over what is known; True where the modes and all that is known allow the short way."""
         run, state = self._run, self._run.state
         modes = state.distance == "G90" and state.units is not None and state.feed_mode == "G94"
-        if not modes or state.motion not in _MOTIONS or run.maybe_adrift or not self._is_open():
+        if not modes or run.maybe_adrift or state.motion not in ("G0", "G1", "G2", "G3") or not self._is_open():
             return False
         self._inch = state.units == "G20"
         for track in self._tracks.values():
@@ -125,16 +96,19 @@ class Quick:
         if len(set(upper)) == len(upper) and set(upper) <= _LETTERS and set(upper) & set("XYZABC"):
             at = {letter: 3 * k + 2 for k, letter in enumerate(upper)}
             axes = tuple((self._track(letter), at[letter]) for letter in "XYZABC" if letter in at)
-            plan = _Plan(at.get("G", 0), at.get("F", 0), axes, tuple(track.axis.letter for track, _ in axes))
+            centre = {letter: at[letter] for letter in "IJK" if letter in at}
+            # an arc moves both axes of its plane, whichever it has words of
+            moved = "XYZ" if centre else "".join(track.axis.letter for track, _ in axes)
+            plan = _Plan(at.get("G", 0), at.get("F", 0), axes, centre, tuple(moved))
         if len(self._plans) > 4096:
             self._plans.clear()
         self._plans[letters] = plan
         return plan
 
-    def _track(self, letter: str) -> _Track:
+    def _track(self, letter: str) -> Track:
         track = self._tracks.get(letter)
         if track is None:
-            track = self._tracks[letter] = _Track(self._run.axes[letter])
+            track = self._tracks[letter] = Track(self._run.axes[letter])
             track.read(self._inch, self._run.machine.decimals)
         return track
 
@@ -142,43 +116,64 @@ class Quick:
         """Shift the words and say True, or leave everything as it is and say False."""
         run = self._run
         state = run.state
-        g, f, axes, _ = plan
-        if pieces[g] not in _FEED_WORDS if g else state.motion != "G1":
+        g, f, axes, centre, _ = plan
+        motion = _MOTIONS.get(pieces[g]) if g else state.motion
+        if motion is None or (centre and motion < "G2") or (motion >= "G2" and not centre):
             return False
-        if not f and run.feed_written != run.feed and run.feed_written is not None:
+        if not f and run.feed_written != run.feed and run.feed_written is not None and motion != "G0":
             return False
-        found = []
+        found: _Found = []
         for track, index in axes:
             text = pieces[index]
             if len(text) > _LONGEST:
                 return False
             at, side = float(text), track.side
             if side != 2 and (at < track.far if side > 0 else not side or at > track.far):
-                return False
-            found.append((track, index, text, at))
+                if motion != "G0" or not side or abs(at - track.far) <= track.ripple:
+                    return False
+                side = -side
+            found.append((track, side, text, at))
+        if centre and not self._is_plain_arc(pieces, centre, found, state, motion):
+            return False
         if f:
             run.feed = run.feed_written = pieces[f].lstrip()
-        if g and state.motion != "G1":
+        if motion != state.motion:
             run.state = step(state, g_words((pieces[g],)))
-        changed = False
-        for track, index, text, at in found:
-            track.far, track.last = at, text
-            if track.step:
-                pieces[index] = _shifted(text, track.step, track.places)
-                changed = True
-        run.tally.changed += changed
+        self._shift(pieces, axes, found)
         return True
 
+    def _is_plain_arc(
+        self, pieces: list[str], centre: dict[str, int], found: _Found, state: ModalState, motion: str
+    ) -> bool:
+        """True for an arc inside one quadrant on which every lashed plane axis goes on the way it went."""
+        first, second, normal = PLANE_AXES[state.plane]
+        offsets = []
+        for letter in (first, second, normal):
+            index = centre.get(CENTRE_LETTER[letter], 0)
+            if index and len(pieces[index]) > _LONGEST:
+                return False
+            offsets.append(float(pieces[index]) if index else 0.0)
+        if state.centre != "G91.1" or offsets[2]:
+            return False
+        tracks = self._track(first), self._track(second)
+        ends = {track: at for track, _, _, at in found}
+        v = [ends.get(track, track.at) - track.at - offset for track, offset in zip(tracks, offsets, strict=False)]
+        u = -offsets[0], -offsets[1]
+        scale = 25.4 if self._inch else 1.0
+        if abs(math.hypot(*u) - math.hypot(*v)) * scale > LOOSEST_MISMATCH_MM:
+            return False
+        ways = in_one_quadrant(u, (v[0], v[1]), motion == "G3")
+        return ways is not None and all(t.placed and t.side in (2, way) for t, way in zip(tracks, ways, strict=True))
 
-def _shifted(text: str, step: int, places: int) -> str:
-    """A number text with ``step`` last digits of ``places`` decimals more, in its own style and with all its decimals."""
-    head, _, tail = text.partition(".")
-    decimals = len(tail)
-    if decimals <= places:
-        value = int(head + tail) * _POWER[places - decimals] + step
-    else:
-        value = int(head + tail) + step * _POWER[decimals - places]
-        places = decimals
-    if value >= 0 and text[0].isdigit() and len(shown := str(value)) > places:
-        return f"{shown[:-places]}.{shown[-places:]}"
-    return text[: len(text) - len(text.lstrip(" \t"))] + digits(value, places, text)
+    def _shift(self, pieces: list[str], axes: tuple[tuple[Track, int], ...], found: _Found) -> None:
+        """Move the axes to their targets and shift the words."""
+        changed = False
+        for (track, index), (_, side, text, at) in zip(axes, found, strict=True):
+            track.far = track.at = at
+            track.last, track.placed = text, True
+            if side != track.side:
+                track.turn(side)
+            if track.step:
+                pieces[index] = shifted_text(text, track.step, track.places)
+                changed = True
+        self._run.tally.changed += changed

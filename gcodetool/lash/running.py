@@ -245,14 +245,10 @@ class Running:
 
     # ---- the slot -------------------------------------------------------------------------------------------------
 
-    def open_slot(self, command: Command) -> None:
+    def open_slot(self, state: ModalState, pieces: list[str], ending: str) -> None:
         """After a rapid: the tool is in air here, so this is where take-ups cost nothing."""
-        if command.after.motion != "G0" or command.deletable:
-            self.out.close()
-            return
         known = [letter for letter in self.lashed if self.axes[letter].side]
-        ending = command.block.ending or self.usual_ending
-        self.out.open(Slot(command.after, self.look(command), ending, command.block.number), known)
+        self.out.open(Slot(state, pieces, self.usual_blank, ending or self.usual_ending), known)
 
 
 def _feed_mm(feed: str | None, state: ModalState) -> float:

@@ -50,7 +50,10 @@ def rapid(run: Running, command: Command) -> None:
     else:
         run.out.close()
         run.put(command, _settled(run, command, goal, plan, command.pieces))
-    run.open_slot(command)
+    if command.after.motion == "G0" and not command.deletable:
+        run.open_slot(command.after, command.pieces, command.block.ending)
+    else:
+        run.out.close()
 
 
 def _plan(run: Running, command: Command, goal: Mapping[str, int]) -> Plan:
