@@ -7,31 +7,25 @@ from collections.abc import Iterator
 import numpy as np
 
 from gcodetool.inspection import features, findings, force, labels, limits, sizes
-from gcodetool.inspection.audit_records import (
-    Audit,
-    AxisRow,
+from gcodetool.inspection.audit_records import Audit, AxisRow, Feature, Finding, MoveRow, ShareRow, StockTaken
+from gcodetool.inspection.cutting_records import (
     Cut,
     Cutters,
     Engagement,
-    Feature,
-    Finding,
     Flags,
     Floats,
     Forces,
     Hold,
     Holding,
-    Job,
     Kind,
     Label,
     Labels,
-    MoveRow,
     Path,
     Samples,
-    ShareRow,
-    StockTaken,
-)  # fmt: skip
+)
 from gcodetool.inspection.durations import durations
 from gcodetool.inspection.engagement import Remains, engage
+from gcodetool.inspection.job_records import Job
 from gcodetool.inspection.stock import take_stock
 from gcodetool.inspection.toolpath import read_path
 from gcodetool.machine import Machine
@@ -80,7 +74,7 @@ def audit(
         tools=tuple(_tool_words(job, path)), material=job.material,
         rows=tuple(_rows(path, marks, engagement, cut, power, holdings)) if every_move else (),
         shares=tuple(_shares(path, job, marks, engagement, times.by_move)),
-        flips=tuple((int(path.line[a]), int(path.line[b]), _word(marks, a), _word(marks, b)) for a, b in marks.flips),
+        flips=tuple((int(path.line[a]), int(path.line[b]), old.word, new.word) for a, b, old, new in marks.flips),
         axes=tuple(_axis_rows(path, machine, samples, holdings)),
         features=tuple(sized), envelope=envelope, durations=times, findings=findings.sorted_findings(found),
         assumptions=tuple(_assumptions(job, sized)), cautions=CAUTIONS,
@@ -92,10 +86,6 @@ def _label(path: Path, job: Job) -> tuple[StockTaken, Engagement, Labels, Cut, R
     engagement, remains = engage(path, job, stock)
     cut = labels.figures(engagement.samples, engagement.slices)
     return stock, engagement, labels.label_moves(path, Cutters.of(job.cutters), engagement, cut), cut, remains
-
-
-def _word(marks: Labels, move: int) -> str:
-    return Label(int(marks.by_move[move])).word
 
 
 def _holdings(machine: Machine, samples: Samples, power: Forces, cut: Cut) -> list[Holding]:
@@ -235,4 +225,3 @@ def _assumptions(job: Job, sized: list[Feature]) -> Iterator[str]:
             "Sizes are predictions of the lash model alone: the lash entered, friction holding the axes except where a drag is told, "
             "no deflection, no thermal growth, cutter diameter as stated. Ranges cover the stated uncertainty of the lash."
         )
-

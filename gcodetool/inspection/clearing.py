@@ -1,11 +1,13 @@
 """What is left of the stock, in cells: which earlier pieces of path can matter at a place, and which places are done.
 
-The plane is cut into square cells.  For each cell the map keeps ``depth``, the height down to which the whole cell is cleared,
-and a list of the pieces that cleared a part of it deeper than that.  A piece that lies above the depth of a cell can no longer
-matter there and is dropped, so the lists stay short however long the program is, and time grows with its length only.
+The plane is cut into square cells.  For each cell the map keeps ``depth``, the height down to which the whole cell is
+cleared, and a list of the pieces that cleared a part of it deeper than that.  A piece that lies above the depth of a
+cell can no longer matter there and is dropped, so the lists stay short however long the program is, and time grows
+with its length only.
 
-The cells never decide a shape: they only say which pieces to ask.  The exact answer comes from the pieces (see ``swept``).
-Everything is widened by ``margin`` so that a point anywhere within half a sampling step of a cell is served by that cell.
+The cells never decide a shape: they only say which pieces to ask.  The exact answer comes from the pieces (see
+``swept``). Everything is widened by ``margin`` so that a point anywhere within half a sampling step of a cell is
+served by that cell.
 """
 
 from __future__ import annotations
@@ -13,7 +15,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from gcodetool.inspection.audit_records import Cutters
+from gcodetool.inspection.cutting_records import Cutters
 from gcodetool.inspection.swept import RC, SWEEP, TOOL, X0, X1, Y0, Y1, Z0, Z1, height_at, path_distance
 
 Floats = NDArray[np.float64]
@@ -88,7 +90,9 @@ class Clearing:
     """The cells, worked through block by block of pieces: ``begin``, ask, ``end``."""
 
     def __init__(self, pieces: Floats, cuts: Flags, cutters: Cutters, grid: Grid, depth: Floats) -> None:
-        """``cuts`` tells which pieces remove material; ``depth`` is the height of the material in each cell (-inf: none)."""
+        """``cuts`` tells which pieces remove material; ``depth`` is the height of the material in each cell (-inf:
+        none).
+        """
         self._pieces, self._cuts, self._cutters, self.grid = pieces, cuts, cutters, grid
         self.depth = depth
         self._shape = _shapes(pieces)
@@ -171,12 +175,17 @@ class Clearing:
 
     def older(self, cell: Ints, height: Floats) -> tuple[Ints, Ints]:
         """Pieces of earlier blocks that cleared a part of a cell at or below a height: ``(row, piece)``."""
-        low, high = np.searchsorted(self._old, cell * TALL), np.searchsorted(self._old, self._key(cell, height), "right")
+        low, high = (
+            np.searchsorted(self._old, cell * TALL),
+            np.searchsorted(self._old, self._key(cell, height), "right"),
+        )
         row, index = expand(low, high - low)
         return row, self._piece[index]
 
     def older_above(self, cell: Ints, height: Floats) -> Floats:
-        """The lowest height above a height at which an earlier block cleared a part of a cell; inf where there is none."""
+        """The lowest height above a height at which an earlier block cleared a part of a cell; inf where there is
+        none.
+        """
         place = np.searchsorted(self._old, self._key(cell, height), "right")
         there = place < len(self._old)
         there[there] = self._old[place[there]] // TALL == cell[there]

@@ -25,7 +25,7 @@ SURE = 0.0003
 LOST_SWEEP = 0.3
 CHORD_ERROR = 1e-5
 WINDOW = 400
-STEP = 200
+STEP = 100
 
 
 @dataclass(frozen=True, slots=True)
@@ -255,15 +255,21 @@ def _nearest(points: Floats, path: Floats) -> tuple[Floats, Floats, NDArray[np.i
     if len(path) < 2:
         vector = points - path[0]
         return np.sqrt((vector**2).sum(axis=1)), vector, at
-    pointer = 0
+    travelled, along = _lengths(points), _lengths(path)
     for low in range(0, len(points), STEP):
         chunk = points[low : low + STEP]
-        guess = int(pointer)
-        lowest, highest = max(0, guess - WINDOW), min(len(path) - 1, guess + WINDOW + STEP)
+        # both paths are about as long: the same share of the journey is the place to look at, on circles run round twice too
+        first, last = np.searchsorted(along, travelled[[low, low + len(chunk) - 1]] * along[-1] / (travelled[-1] or 1.0))
+        lowest, highest = max(0, int(first) - WINDOW), min(len(path) - 1, int(last) + WINDOW)
         d, v, index = _to_segments(chunk, path[lowest : highest + 1])
         away[low : low + STEP], vector[low : low + STEP], at[low : low + STEP] = d, v, index + lowest
-        pointer = int(at[min(low + STEP, len(points)) - 1])
     return away, vector, at
+
+
+def _lengths(points: Floats) -> Floats:
+    """Length of the path up to each point."""
+    steps = np.sqrt((np.diff(points, axis=0) ** 2).sum(axis=1))
+    return np.concatenate(([0.0], np.cumsum(steps)))
 
 
 def _to_segments(points: Floats, path: Floats) -> tuple[Floats, Floats, NDArray[np.int64]]:

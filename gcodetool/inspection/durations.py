@@ -1,8 +1,9 @@
 """How long the job takes, with and without take-ups.
 
-Two figures bound the truth.  At programmed feeds each move takes length / feed.  From stop to stop each move also speeds up and
-slows down: with acceleration a and feed v a move of length s takes s/v + v/a, or 2 sqrt(s/a) where it is too short to reach v
-(uniform acceleration, the trapezoid of any mechanics text).  A controller that looks ahead lies between the two.
+Two figures bound the truth.  At programmed feeds each move takes length / feed.  From stop to stop each move also
+speeds up and slows down: with acceleration a and feed v a move of length s takes s/v + v/a, or 2 sqrt(s/a) where it
+is too short to reach v (uniform acceleration, the trapezoid of any mechanics text).  A controller that looks ahead
+lies between the two.
 """
 
 from __future__ import annotations
@@ -11,7 +12,8 @@ import math
 
 import numpy as np
 
-from gcodetool.inspection.audit_records import Durations, Floats, Path
+from gcodetool.inspection.audit_records import Durations
+from gcodetool.inspection.cutting_records import Floats, Path
 from gcodetool.inspection.lash_path import turning_points
 from gcodetool.machine import Machine
 
@@ -42,7 +44,11 @@ def durations(path: Path, machine: Machine) -> Durations:
     acceleration = _along(path, machine, "acceleration")
     stops = None
     if path.count and not np.isinf(acceleration).any():
-        stops = float(np.sum(np.where(np.isinf(speed), 0.0, trapezoid(path.length, np.nan_to_num(speed, posinf=1e9), acceleration))))
+        stops = float(
+            np.sum(
+                np.where(np.isinf(speed), 0.0, trapezoid(path.length, np.nan_to_num(speed, posinf=1e9), acceleration))
+            )
+        )
     else:
         said.append("without accelerations in the machine sheet the time from stop to stop is not known")
     count, extra = _take_ups(path, machine)
@@ -52,7 +58,9 @@ def durations(path: Path, machine: Machine) -> Durations:
 
 
 def _along(path: Path, machine: Machine, key: str) -> Floats:
-    """The largest feed or acceleration along each move that keeps every axis within its own; inf where none is known."""
+    """The largest feed or acceleration along each move that keeps every axis within its own; inf where none is
+    known.
+    """
     step = np.abs(path.end - path.start)
     size = np.maximum(path.length, 1e-12)
     found = np.full(path.count, math.inf)
@@ -79,7 +87,7 @@ def _take_ups(path: Path, machine: Machine) -> tuple[int, float]:
         turns = turns[~path.rapid[move[turns]]]
         count += len(turns)
         feed = float(machine.take_up_feed) if machine.take_up_feed else math.nan
-        speed = (np.full(len(turns), feed) if feed == feed else path.feed[move[turns]]) / 60.0
+        speed = (path.feed[move[turns]] if math.isnan(feed) else np.full(len(turns), feed)) / 60.0
         lash = np.full(len(turns), float(axis.lash))
         if axis.acceleration is None:
             time += float(np.nansum(lash / speed))

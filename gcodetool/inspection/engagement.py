@@ -1,8 +1,9 @@
 """Where the cutter meets material along a program: the one place that follows stock and cut through time.
 
-Moves are cut into pieces, and places are sampled along them.  At each place the leading half of the cutter's circle is compared
-with all that was cut before, at every height at which that changes: an angle is engaged where the stock is still there.  Angles
-are exact for straight and circular paths of flat cutters; ball and vee cutters are taken in slices of their height.
+Moves are cut into pieces, and places are sampled along them.  At each place the leading half of the cutter's circle
+is compared with all that was cut before, at every height at which that changes: an angle is engaged where the stock
+is still there.  Angles are exact for straight and circular paths of flat cutters; ball and vee cutters are taken in
+slices of their height.
 """
 
 from __future__ import annotations
@@ -11,20 +12,10 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from gcodetool.inspection.audit_records import (
-    FLAT,
-    Cutters,
-    Engagement,
-    Flags,
-    Floats,
-    Ints,
-    Job,
-    Path,
-    Samples,
-    Slices,
-    StockTaken,
-)
+from gcodetool.inspection.audit_records import StockTaken
 from gcodetool.inspection.clearing import NO_HEIGHT, Clearing, Grid
+from gcodetool.inspection.cutting_records import Cutters, Engagement, Flags, Floats, Ints, Path, Samples, Slices
+from gcodetool.inspection.job_records import FLAT, Job
 from gcodetool.inspection.stock import Outline
 from gcodetool.inspection.swept import PI, RC, X0, X1, Y0, Y1, Circles, covered, gaps, radius_at
 from gcodetool.inspection.toolpath import cut_up, directions, places, vertical_moves
@@ -186,7 +177,9 @@ class _Follower:
         """Ranges of pieces that touch a bounded number of cells."""
         p = self.pieces
         reach = self.cutters.radius[self.tool] + 2.0 * self.grid.size
-        cells = (np.abs(p[:, X1] - p[:, X0]) + 2 * reach) * (np.abs(p[:, Y1] - p[:, Y0]) + 2 * reach) / self.grid.size**2
+        cells = (
+            (np.abs(p[:, X1] - p[:, X0]) + 2 * reach) * (np.abs(p[:, Y1] - p[:, Y0]) + 2 * reach) / self.grid.size**2
+        )
         number = np.maximum(np.cumsum(cells) // 2e6, np.arange(len(p)) // BLOCK)
         starts = np.flatnonzero(np.diff(number, prepend=-1.0) > 0)
         yield from zip(starts.tolist(), [*starts[1:].tolist(), len(p)], strict=True)
@@ -237,7 +230,9 @@ class _Follower:
                 np.add.at(self.buried, rows[row], (last - first) / (2.0 * PI * RINGS))
                 for sample, first, last, low, high, _ in self._rise(probes.of(upright)):
                     share = (last - first) / (2.0 * PI * RINGS) * (high - low)
-                    np.add.at(self.volume, sample, share * PI * self.cutters.radius[self.tool[self.piece_of[sample]]] ** 2)
+                    np.add.at(
+                        self.volume, sample, share * PI * self.cutters.radius[self.tool[self.piece_of[sample]]] ** 2
+                    )
 
     def stands(self, x: Floats, y: Floats, height: Floats) -> Flags:
         """True for points with material, after everything; a point is a very small circle."""

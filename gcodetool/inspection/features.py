@@ -1,17 +1,20 @@
 """What a caliper could measure, recognised in the path: bores, bosses, arcs, straight walls, slots, drilled holes.
 
-A stretch of path counts only where it leaves a wall, that is where material still stands beside the cutter after the whole
-program has run.  The same shape cut at several depths counts once, at its deepest.
+A stretch of path counts only where it leaves a wall, that is where material still stands beside the cutter after the
+whole program has run.  The same shape cut at several depths counts once, at its deepest.
 """
 
 from __future__ import annotations
 
 import math
 from collections.abc import Callable, Iterable, Iterator
+from itertools import pairwise
 
 import numpy as np
 
-from gcodetool.inspection.audit_records import Cutter, Flags, Floats, Ints, Kind, Labels, Path, Shape
+from gcodetool.inspection.audit_records import Shape
+from gcodetool.inspection.cutting_records import Flags, Floats, Ints, Kind, Labels, Path
+from gcodetool.inspection.job_records import Cutter
 
 # two centres or radii closer than this are one, mm
 SAME = 0.005
@@ -117,7 +120,7 @@ def _chord_circles(path: Path, feed: Flags) -> Iterator[_Group]:
     joined[:1] = False
     sense = np.where(joined, np.sign(turn), 0.0)
     change = np.flatnonzero(np.diff(sense, prepend=0.0, append=0.0) != 0.0)
-    for first, last in zip(change, change[1:], strict=False):
+    for first, last in pairwise(change.tolist()):
         if sense[first] and last - first >= FEWEST_CHORDS - 2:
             yield from _fitted(path, first - 1, last, turn, int(sense[first]))
 

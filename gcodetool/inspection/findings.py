@@ -1,7 +1,8 @@
 """The findings of an audit: what each code means, and how results become findings.
 
-Ranges: 1xx what had to be assumed, 2xx spindle and sense of the cut, 3xx limits and collisions, 4xx the chip, 5xx lash and force,
-7xx sizes.  A code never changes its meaning.  docs/audit.md explains each; a test holds that page and this table together.
+Ranges: 1xx what had to be assumed, 2xx spindle and sense of the cut, 3xx limits and collisions, 4xx the chip, 5xx
+lash and force, 7xx sizes.  A code never changes its meaning.  docs/audit.md explains each; a test holds that page and
+this table together.
 """
 
 from __future__ import annotations
@@ -11,25 +12,21 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from gcodetool.inspection.audit_records import (
-    AxisEnvelope,
+from gcodetool.inspection.audit_records import AxisEnvelope, Feature, Finding, Severity, StockTaken
+from gcodetool.inspection.cutting_records import (
     Cut,
     Engagement,
-    Feature,
-    Finding,
     Floats,
     Forces,
     Hold,
     Holding,
     Ints,
-    Job,
     Kind,
     Label,
     Labels,
     Path,
-    Severity,
-    StockTaken,
-)  # fmt: skip
+)
+from gcodetool.inspection.job_records import Job
 from gcodetool.machine import Machine
 
 NOTE, CAUTION, DANGER = Severity.NOTE, Severity.CAUTION, Severity.DANGER
@@ -55,33 +52,76 @@ CODES = {
     code.number: code
     for code in (
         Code(101, NOTE, "the top of the stock was guessed", "State it: --stock-top Z, or top in the job sheet"),
-        Code(102, NOTE, "the outline of the stock was guessed", "State it: --stock, or the stock table of the job sheet"),
-        Code(103, NOTE, "no material was given, so no force is estimated", "State it: --material NAME, or the job sheet"),
-        Code(104, NOTE, "chip and force need feed, speed and flutes", "Write F and S into the program, or give --speed and --feed"),
-        Code(105, NOTE, "friction is not in the machine sheet", "Measure it with a spring scale and put it in the sheet"),
-        Code(106, CAUTION, "motion of a rotary axis is not followed", "Judge this motion yourself; nothing here includes it"),
-        Code(107, NOTE, "no lash was given, so sizes come out as intended", "Name the machine sheet, or give --lash x=0.12"),
+        Code(
+            102, NOTE, "the outline of the stock was guessed", "State it: --stock, or the stock table of the job sheet"
+        ),
+        Code(
+            103, NOTE, "no material was given, so no force is estimated", "State it: --material NAME, or the job sheet"
+        ),
+        Code(
+            104,
+            NOTE,
+            "chip and force need feed, speed and flutes",
+            "Write F and S into the program, or give --speed and --feed",
+        ),
+        Code(
+            105, NOTE, "friction is not in the machine sheet", "Measure it with a spring scale and put it in the sheet"
+        ),
+        Code(
+            106,
+            CAUTION,
+            "motion of a rotary axis is not followed",
+            "Judge this motion yourself; nothing here includes it",
+        ),
+        Code(
+            107,
+            NOTE,
+            "no lash was given, so sizes come out as intended",
+            "Name the machine sheet, or give --lash x=0.12",
+        ),
         Code(201, DANGER, "the spindle does not turn in a cut", "Start it with S and M3 before the first cut"),
-        Code(202, DANGER, "the cutter turns the wrong way for its hand", "Use M3 with a right-hand cutter, M4 with a left-hand one"),
-        Code(203, CAUTION, "climb and conventional change inside a contour", "Expect a step in the wall; cut the contour one way"),
+        Code(
+            202,
+            DANGER,
+            "the cutter turns the wrong way for its hand",
+            "Use M3 with a right-hand cutter, M4 with a left-hand one",
+        ),
+        Code(
+            203,
+            CAUTION,
+            "climb and conventional change inside a contour",
+            "Expect a step in the wall; cut the contour one way",
+        ),
         Code(204, NOTE, "a pass removes nothing and only rubs", "Keep it if it is meant as a spring pass"),
         Code(301, DANGER, "a rapid meets material", "Lift the cutter before this move, or make it a feed motion"),
         Code(302, DANGER, "an axis leaves its travel", "Move the work zero, or use another machine"),
-        Code(303, DANGER, "the program is larger than the travel of an axis", "Cut it in two settings, or on another machine"),
+        Code(
+            303,
+            DANGER,
+            "the program is larger than the travel of an axis",
+            "Cut it in two settings, or on another machine",
+        ),
         Code(304, DANGER, "the cutter enters a keep-out area", "Move the clamp, or lift the cutter over it"),
         Code(305, CAUTION, "a feed is above the limit of an axis", "Reduce F; the machine will not reach it"),
         Code(306, CAUTION, "a spindle speed is outside the machine's range", "Choose S within the range"),
         Code(307, DANGER, "a spindle speed is above what is marked on the cutter", "Reduce S below the mark"),
         Code(308, CAUTION, "the cut goes below the stock", "Check the depth; a backing board must lie below"),
         Code(309, NOTE, "machine positions are not known", "State --zero x=.. to compare positions with the travel"),
-        Code(310, CAUTION, "little Z travel is left below the deepest point", "Raise the work or hold the cutter longer"),
+        Code(
+            310, CAUTION, "little Z travel is left below the deepest point", "Raise the work or hold the cutter longer"
+        ),
         Code(401, CAUTION, "the chip is so thin that the edge rubs", "Raise F, reduce S, or take a wider cut"),
         Code(402, CAUTION, "the chip is thick for a light machine", "Reduce F, or raise S"),
         Code(403, CAUTION, "a slot is deeper than the cutter is wide", "Cut it in several depths"),
         Code(501, DANGER, "the cut drags an axis across its lash", "See the text of the finding"),
         Code(502, CAUTION, "the cut comes near to dragging an axis", "Cut lighter there, or tighten spring or slide"),
         Code(701, CAUTION, "a size will be wrong without compensation", "Run compensate on the program"),
-        Code(702, CAUTION, "a size may be wrong even with compensation", "Measure the lash better, or keep the cut from dragging"),
+        Code(
+            702,
+            CAUTION,
+            "a size may be wrong even with compensation",
+            "Measure the lash better, or keep the cut from dragging",
+        ),
     )
 }
 
@@ -103,7 +143,9 @@ def places(code: int, lines: Sequence[int], texts: Sequence[str], action: str = 
         yield finding(code, line, text, action)
     rest = len(lines) - MOST_PLACES
     if rest > 0:
-        yield finding(code, lines[MOST_PLACES], f"{CODES[code].title}: {rest} more places, the first of them here", action, rest)
+        yield finding(
+            code, lines[MOST_PLACES], f"{CODES[code].title}: {rest} more places, the first of them here", action, rest
+        )
 
 
 def of_assumptions(
@@ -117,7 +159,9 @@ def of_assumptions(
         yield finding(103, 0, CODES[103].title)
     if engaged.any() and np.isnan(forces.chip_load[engaged]).any():
         where = moves[engaged & np.isnan(forces.chip_load)]
-        yield finding(104, int(path.line[where[0]]), "feed or spindle speed is not known here", count=len(np.unique(where)))
+        yield finding(
+            104, int(path.line[where[0]]), "feed or spindle speed is not known here", count=len(np.unique(where))
+        )
     turning = np.flatnonzero(path.turning)
     if len(turning):
         yield finding(106, int(path.line[turning[0]]), "a rotary axis moves: left out", count=len(turning))
@@ -127,7 +171,9 @@ def of_assumptions(
     for letter in lashed:
         axis = machine.axis(letter)
         if axis.friction is None and not axis.preload:
-            yield finding(105, 0, f"axis {letter}: neither friction nor preload is known, so nobody can say whether it holds")
+            yield finding(
+                105, 0, f"axis {letter}: neither friction nor preload is known, so nobody can say whether it holds"
+            )
 
 
 def of_sense(path: Path, job: Job, labels: Labels, cut: Cut, moves: Ints) -> Iterator[Finding]:
@@ -146,8 +192,10 @@ def of_sense(path: Path, job: Job, labels: Labels, cut: Cut, moves: Ints) -> Ite
         hand = "right" if hands[wrong[0]] > 0 else "left"
         text = f"{word} with a {hand}-hand cutter: it does not cut. Labels are those of the right sense"
         yield finding(202, int(path.line[wrong[0]]), text, count=len(wrong))
-    words = [f"{Label(int(labels.by_move[a])).word} before, {Label(int(labels.by_move[b])).word} from here" for a, b in labels.flips]
-    yield from places(203, [int(path.line[b]) for _, b in labels.flips], [f"the contour changes: {word}" for word in words])
+    words = [
+        f"the contour changes: {before.word} before, {after.word} from here" for _, _, before, after in labels.flips
+    ]
+    yield from places(203, [int(path.line[b]) for _, b, _, _ in labels.flips], words)
     rubbing = np.flatnonzero(labels.spring)
     if len(rubbing):
         text = f"{len(rubbing)} moves run along a face that was cut before and remove nothing"
@@ -164,26 +212,33 @@ def of_travel(envelope: Sequence[AxisEnvelope], beyond: Sequence[float], reserve
             yield finding(code, 0, text)
     open_ = [axis.axis for axis in envelope if axis.travel is not None and not axis.placed]
     if open_:
-        yield finding(309, 0, f"axes {' '.join(open_)}: only the size of the program was compared with the travel, not its place")
+        yield finding(
+            309, 0, f"axes {' '.join(open_)}: only the size of the program was compared with the travel, not its place"
+        )
     if reserve is not None and 0.0 <= reserve < RESERVE:
         yield finding(310, 0, f"{reserve:.3f} mm of Z travel are left below the deepest point")
 
 
-def of_chip(path: Path, job: Job, labels: Labels, engagement: Engagement, cut: Cut, forces: Forces) -> Iterator[Finding]:
+def of_chip(
+    path: Path, job: Job, labels: Labels, engagement: Engagement, cut: Cut, forces: Forces
+) -> Iterator[Finding]:
     """4xx: chips too thin or too thick, deep slots."""
     moves, feed = engagement.samples.move, ~path.rapid[engagement.samples.move]
     material = job.material
     if material is not None:
-        thin = np.nan_to_num(forces.mean_chip, nan=np.inf) < material.least_chip
-        yield from _worst(401, path, moves, feed & thin & (labels.by_sample > 0), -forces.mean_chip,
-                          lambda k: f"mean chip {1000 * forces.mean_chip[k]:.1f} um, less than {1000 * material.least_chip:g} um")  # fmt: skip
+        largest = np.nan_to_num(forces.chip_load / forces.thinning, nan=np.inf)
+        thin = feed & (largest < material.least_chip) & (labels.by_sample > 0)
+        yield from _worst(401, path, moves, thin, -largest,
+                          lambda k: f"the chip is {1000 * largest[k]:.1f} um at its thickest, less than {1000 * material.least_chip:g} um")  # fmt: skip
         if material.most_chip is not None:
             thick = forces.chip_load > material.most_chip
             yield from _worst(402, path, moves, feed & thick & (labels.by_sample > 0), forces.chip_load,
                               lambda k: f"{forces.chip_load[k]:.4f} mm per tooth, more than {material.most_chip:g} mm")  # fmt: skip
     wide = 2.0 * np.array([cutter.radius for cutter in job.cutters])[path.tool[moves]] if len(moves) else np.empty(0)
     deep = feed & (labels.by_sample == Label.SLOT) & (cut.depth > DEEP_SLOT * wide)
-    yield from _worst(403, path, moves, deep, cut.depth, lambda k: f"{cut.depth[k]:.3f} mm deep with a {wide[k]:g} mm cutter")
+    yield from _worst(
+        403, path, moves, deep, cut.depth, lambda k: f"{cut.depth[k]:.3f} mm deep with a {wide[k]:g} mm cutter"
+    )
 
 
 def _worst(code: int, path: Path, moves: Ints, mark: np.ndarray, size: Floats, text: object) -> Iterator[Finding]:  # type: ignore[type-arg]
@@ -226,6 +281,7 @@ def of_sizes(features: Sequence[Feature], tolerance: float) -> Iterator[Finding]
 
 
 def _size_words(feature: Feature, after: bool = False) -> str:
-    worst = max(feature.measures, key=lambda each: abs(each.error_after if after else each.error_before))
+    rows = [each for each in feature.measures if each.counts]
+    worst = max(rows, key=lambda each: abs(each.error_after if after else each.error_before))
     error = worst.error_after if after else worst.error_before
     return f"{feature.name}: {worst.name} off by {error:+.3f} mm"

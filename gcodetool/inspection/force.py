@@ -1,9 +1,10 @@
 """Mean cutting force by the mechanistic model, and whether friction and preload hold an axis against it.
 
-Model (Altintas, Manufacturing Automation, ch. 2; Budak, Altintas and Armarego, J. Eng. Ind. 118, 1996; both from memory, the
-algebra is tested against direct integration): per tooth and slice of height dz, with chip h = fz sin(phi),
-dFt = (Kt h + Ket) dz, dFr = (Kr h + Ker) dz, dFa = (Ka h + Kea) dz.  Force on the tool in the frame (along the feed, to its left).
-Averages over a turn do not depend on the helix angle.  Forces in N, lengths in mm, angles in radians.
+Model (Altintas, Manufacturing Automation, ch. 2; Budak, Altintas and Armarego, J. Eng. Ind. 118, 1996; both from
+memory, the algebra is tested against direct integration): per tooth and slice of height dz, with chip h = fz
+sin(phi), dFt = (Kt h + Ket) dz, dFr = (Kr h + Ker) dz, dFa = (Ka h + Kea) dz.  Force on the tool in the frame (along
+the feed, to its left). Averages over a turn do not depend on the helix angle.  Forces in N, lengths in mm, angles in
+radians.
 
 The mean force decides whether lash is crossed: a tooth's pulse is far too short to move a carriage through it.
 """
@@ -14,7 +15,7 @@ import math
 
 import numpy as np
 
-from gcodetool.inspection.audit_records import (
+from gcodetool.inspection.cutting_records import (
     Cut,
     Cutters,
     Flags,
@@ -24,11 +25,11 @@ from gcodetool.inspection.audit_records import (
     Holding,
     Ints,
     Label,
-    Material,
     Path,
     Samples,
     Slices,
-)  # fmt: skip
+)
+from gcodetool.inspection.job_records import Material
 from gcodetool.machine import Axis
 
 TWO_PI = 2.0 * math.pi
@@ -94,7 +95,9 @@ def largest_sine(first: Floats, last: Floats) -> Floats:
     return np.where(ahead, 1.0, np.maximum(np.sin(first), np.sin(last)))
 
 
-def forces(path: Path, cutters: Cutters, samples: Samples, slices: Slices, cut: Cut, material: Material | None) -> Forces:
+def forces(
+    path: Path, cutters: Cutters, samples: Samples, slices: Slices, cut: Cut, material: Material | None
+) -> Forces:
     """Force and chip at every sample; nan for force without a material, for chips without feed and speed."""
     count = len(samples.move)
     load = chip_loads(path, cutters, samples.move)
@@ -117,7 +120,7 @@ def forces(path: Path, cutters: Cutters, samples: Samples, slices: Slices, cut: 
         return Forces(none, none, none, none, none, none, none, load, average, thinning)
     k = coefficients(material, np.nan_to_num(chip, nan=1e-3))
     along, left, axial, tangential = (
-        np.bincount(slices.sample, part, count)
+        np.bincount(slices.sample, part, count).astype(float)
         for part in mean_force(first, last, tall, load_here, cutters.flutes[tool_here], k)
     )
     left *= cutters.hand[tool]
@@ -149,9 +152,9 @@ def _peak(material: Material, average: Floats, load: Floats, thick: Floats, dept
 def hold(axis: Axis, force: Floats, way: Floats, cutting: Flags) -> Holding:
     """The verdict for one axis at each sample; ``way`` is the sign of its motion, 0 where it stands.
 
-    Plain nut: it is dragged where the cut pushes along its motion by more than the friction; standing, by any push larger
-    than that.  A spring-loaded nut opens away from its stiff side where the push exceeds the preload, friction helping or not.
-    Without a stiff side both ways are taken as the springy one.
+    Plain nut: it is dragged where the cut pushes along its motion by more than the friction; standing, by any push
+    larger than that.  A spring-loaded nut opens away from its stiff side where the push exceeds the preload, friction
+    helping or not. Without a stiff side both ways are taken as the springy one.
     """
     count = len(force)
     if not axis.lash:
@@ -178,7 +181,9 @@ def _ratio(axis: Axis, force: Floats, way: Floats, friction: float, preload: flo
     if axis.stiff_side is not None:
         soft = -float(axis.stiff_side)
         return _over(np.maximum(force * soft, 0.0), preload + friction * way * soft, moving), np.full(len(force), soft)
-    ahead = _over(np.maximum(np.where(moving, force * way, np.abs(force)), 0.0), np.full(len(force), preload + friction))
+    ahead = _over(
+        np.maximum(np.where(moving, force * way, np.abs(force)), 0.0), np.full(len(force), preload + friction)
+    )
     return ahead, np.where(moving, way, np.sign(force))
 
 

@@ -1,15 +1,17 @@
-"""Climb, conventional, slot or air: from the engaged angles to labels, kinds of motion and places where a contour flips.
+"""Climb, conventional, slot or air: from the engaged angles to labels, kinds of motion and places where a contour
+flips.
 
-With a right-hand cutter (M3) the part of the engagement left of the feed direction is cut conventional: there the chip begins
-with no thickness.  The part right of it is cut climb: there it ends with none (Altintas, Manufacturing Automation, ch. 2, from
-memory).  A left-hand cutter (M4) exchanges the two.  A cut that lies on both sides about equally is a slot and has no class.
+With a right-hand cutter (M3) the part of the engagement left of the feed direction is cut conventional: there the
+chip begins with no thickness.  The part right of it is cut climb: there it ends with none (Altintas, Manufacturing
+Automation, ch. 2, from memory).  A left-hand cutter (M4) exchanges the two.  A cut that lies on both sides about
+equally is a slot and has no class.
 """
 
 from __future__ import annotations
 
 import numpy as np
 
-from gcodetool.inspection.audit_records import (
+from gcodetool.inspection.cutting_records import (
     Cut,
     Cutters,
     Engagement,
@@ -22,7 +24,7 @@ from gcodetool.inspection.audit_records import (
     Path,
     Samples,
     Slices,
-)  # fmt: skip
+)
 
 # a cut is a slot where the smaller side has at least this share of the larger: 0.83 D of radial width or more
 BOTH_SIDES = 2.0 / 3.0
@@ -124,26 +126,32 @@ def _upright(path: Path) -> Flags:
     return found
 
 
-def flips(path: Path, cutters: Cutters, samples: Samples, by_sample: Ints) -> list[tuple[int, int]]:
-    """Pairs of moves (last before, first after) between which a contour changes from climb to conventional or back.
+def flips(path: Path, cutters: Cutters, samples: Samples, by_sample: Ints) -> list[tuple[int, int, Label, Label]]:
+    """Where a contour changes between climb and conventional: (last move before, first move after, label before,
+    after).
 
-    Slots and air between them do not count, and stretches shorter than half the cutter's radius are passed over.
+    Slots and air between the two do not count unless they are longer than the cutter is wide; stretches of one label
+    that are shorter than half the cutter's radius are passed over.
     """
-    keep = np.flatnonzero(((by_sample == Label.CLIMB) | (by_sample == Label.CONVENTIONAL)) & ~path.rapid[samples.move])
+    radius = cutters.radius[path.tool[samples.move]]
+    one_sided = (by_sample == Label.CLIMB) | (by_sample == Label.CONVENTIONAL)
+    keep = np.flatnonzero(one_sided & ~path.rapid[samples.move])
+    if not len(keep):
+        return []
+    travelled = np.cumsum(samples.weight)
     for _ in range(2):
         move, label = samples.move[keep], by_sample[keep]
-        run = np.cumsum(np.concatenate([[True], _changes(path, move, label)])) - 1 if len(keep) else keep
-        long = np.bincount(run, samples.weight[keep]) if len(keep) else np.empty(0)
-        keep = keep[long[run] >= SHORT * cutters.radius[path.tool[move]]]
-    move, label = samples.move[keep], by_sample[keep]
-    same = (path.chain[move[1:]] == path.chain[move[:-1]]) & (path.tool[move[1:]] == path.tool[move[:-1]])
-    place = np.flatnonzero(same & (label[1:] != label[:-1]))
-    return [(int(move[k]), int(move[k + 1])) for k in place]
-
-
-def _changes(path: Path, move: Ints, label: Ints) -> Flags:
-    changed: Flags = (label[1:] != label[:-1]) | (path.chain[move[1:]] != path.chain[move[:-1]])
-    return changed
+        change = (label[1:] != label[:-1]) | (path.chain[move[1:]] != path.chain[move[:-1]])
+        run = np.cumsum(np.concatenate([[True], change])) - 1
+        keep = keep[np.bincount(run, samples.weight[keep])[run] >= SHORT * radius[keep]]
+    before, after = keep[:-1], keep[1:]
+    same = path.chain[samples.move[before]] == path.chain[samples.move[after]]
+    near = travelled[after] - samples.weight[after] - travelled[before] < 2.0 * radius[before]
+    place = np.flatnonzero(same & near & (by_sample[before] != by_sample[after]))
+    return [
+        (int(samples.move[a]), int(samples.move[b]), Label(int(by_sample[a])), Label(int(by_sample[b])))
+        for a, b in zip(before[place], after[place], strict=True)
+    ]
 
 
 def word_of(labels: Labels, move: int) -> str:

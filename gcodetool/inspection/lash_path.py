@@ -1,17 +1,19 @@
 """The actual path of the axes under lash, sampled: with and without compensation, with and without a cut that drags.
 
-One axis is followed by the play operator (see ``lash.play``), which is exact on any monotone stretch, so sampling costs nothing in
-accuracy as long as the turning points are among the samples.  Where the cut drags an axis, it sits at that end of its lash.
+One axis is followed by the play operator (see ``lash.play``), which is exact on any monotone stretch, so sampling
+costs nothing in accuracy as long as the turning points are among the samples.  Where the cut drags an axis, it sits
+at that end of its lash.
 """
 
 from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 
-from gcodetool.inspection.audit_records import Floats, Ints, Path
+from gcodetool.inspection.cutting_records import Floats, Ints, Path
 from gcodetool.lash.play import shift
 
 PAIRS = {1: (0, 1), 2: (2, 0), 3: (1, 2)}
@@ -19,7 +21,9 @@ PAIRS = {1: (0, 1), 2: (2, 0), 3: (1, 2)}
 
 @dataclass(frozen=True, slots=True)
 class AxisCase:
-    """One axis in one case: its true ``lash``, the lash it is ``compensated`` for (None: not at all), its datum side."""
+    """One axis in one case: its true ``lash``, the lash it is ``compensated`` for (None: not at all), its datum
+    side.
+    """
 
     lash: float
     compensated: float | None
@@ -85,7 +89,7 @@ def _runs(command: Floats, push: Ints | None) -> list[tuple[int, int]]:
     if push is not None:
         change |= push[1:] != push[:-1]
     bounds = [0, *(np.flatnonzero(change) + 1).tolist(), len(command)]
-    return list(zip(bounds, bounds[1:], strict=False))
+    return list(pairwise(bounds))
 
 
 def start_state(case: AxisCase, at: float) -> AxisState:

@@ -1,4 +1,6 @@
-"""Limits and sense: travel, keep-out areas, feeds, speeds, a cutter that was never started, rapids that meet material."""
+"""Limits and sense: travel, keep-out areas, feeds, speeds, a cutter that was never started, rapids that meet
+material.
+"""
 
 from __future__ import annotations
 
@@ -8,20 +10,9 @@ from dataclasses import dataclass
 import numpy as np
 import shapely
 
-from gcodetool.inspection.audit_records import (
-    AxisEnvelope,
-    Cutter,
-    Engagement,
-    Flags,
-    Floats,
-    Ints,
-    Job,
-    KeepOut,
-    Kind,
-    Labels,
-    Path,
-    StockTaken,
-)  # fmt: skip
+from gcodetool.inspection.audit_records import AxisEnvelope, StockTaken
+from gcodetool.inspection.cutting_records import Engagement, Flags, Floats, Ints, Kind, Labels, Path
+from gcodetool.inspection.job_records import Cutter, Job, KeepOut
 from gcodetool.inspection.lash_path import turning_points
 from gcodetool.machine import Machine
 
@@ -45,8 +36,8 @@ class Hit:
 def envelope(path: Path, machine: Machine, job: Job) -> list[AxisEnvelope]:
     """The commanded range of X, Y and Z in machine positions, as compensation would command it.
 
-    Take-ups reach one lash beyond the path, away from the datum side; settles one lash and the settle margin past the targets of
-    the first rapids and of those after a tool change.
+    Take-ups reach one lash beyond the path, away from the datum side; settles one lash and the settle margin past the
+    targets of the first rapids and of those after a tool change.
     """
     found = []
     for k, letter in enumerate(NAMES):
@@ -99,7 +90,9 @@ def below_stock(path: Path, stock: StockTaken) -> list[Hit]:
 
 
 def keep_out_hits(path: Path, cutters: Sequence[Cutter], keep_outs: Sequence[KeepOut]) -> list[Hit]:
-    """Moves, rapids too, on which the cutter enters a keep-out area below its top; each area once, with its first move."""
+    """Moves, rapids too, on which the cutter enters a keep-out area below its top; each area once, with its first
+    move.
+    """
     if not keep_outs or not path.count:
         return []
     radius = np.array([cutter.radius for cutter in cutters])[path.tool]

@@ -1,8 +1,8 @@
 """Cutting data of common materials: defaults to begin with, each with its source and its band.  All are estimates.
 
-Published coefficients for one family of material differ by a factor of five (the table below has 244 to 1319 N/mm^2 for
-aluminium alloys), and a dull edge doubles them again.  So every force comes with a band, and a user who has measured better
-numbers writes them into the job sheet.
+Published coefficients for one family of material differ by a factor of five (the table below has 244 to 1319 N/mm^2
+for aluminium alloys), and a dull edge doubles them again.  So every force comes with a band, and a user who has
+measured better numbers writes them into the job sheet.
 
 Sources of the rows:
 
@@ -19,7 +19,7 @@ import difflib
 from collections.abc import Mapping
 
 from gcodetool.errors import SheetError
-from gcodetool.inspection.audit_records import Material
+from gcodetool.inspection.job_records import Material
 
 _A = "review of milling force models for Al alloys, Chin. J. Mech. Eng. 2021, table 5, doi 10.1186/s10033-021-00536-9"
 _B = "kc1.1 and mc by VDI 3323 group {}; radial share 0.3 (band 0.15 to 0.6)"
@@ -80,7 +80,9 @@ def material_named(name: str) -> Material:
     if found is None:
         near = difflib.get_close_matches(name.lower(), list(DEFAULTS), 1, 0.4)
         guess = f"did you mean {near[0]}? " if near else ""
-        raise SheetError(f"material {name}: {guess}the materials are {', '.join(DEFAULTS)}; others go into the job sheet")
+        raise SheetError(
+            f"material {name}: {guess}the materials are {', '.join(DEFAULTS)}; others go into the job sheet"
+        )
     return found
 
 

@@ -1,8 +1,9 @@
 """What a caliper will show: predicted sizes and form errors of the recognised shapes, without and with compensation.
 
-Closed forms of the model (friction holds the axes, lash B on both): a round path of radius R has extents 2R - B, flats of
-sqrt(2RB - B^2) after each quadrant and a radius of sqrt(R^2 - B^2/2) on the diagonals.  The figures here come from driving the
-sampled path through the play of each axis, so that start sides, single laps, unequal lash and dragged axes are in them.
+Closed forms of the model (friction holds the axes, lash B on both): a round path of radius R has extents 2R - B,
+flats of sqrt(2RB - B^2) after each quadrant and a radius of sqrt(R^2 - B^2/2) on the diagonals.  The figures here
+come from driving the sampled path through the play of each axis, so that start sides, single laps, unequal lash and
+dragged axes are in them.
 """
 
 from __future__ import annotations
@@ -14,7 +15,8 @@ from dataclasses import dataclass
 import numpy as np
 import shapely
 
-from gcodetool.inspection.audit_records import Feature, Flags, Floats, Holding, Ints, Path, Samples, Shape
+from gcodetool.inspection.audit_records import Feature, Shape
+from gcodetool.inspection.cutting_records import Flags, Floats, Holding, Ints, Path, Samples
 from gcodetool.inspection.lash_path import AxisCase, AxisState, follow, states_before
 from gcodetool.inspection.spacing import drag_words, hole_pairs, measure, widths
 from gcodetool.inspection.toolpath import places
@@ -37,7 +39,9 @@ class Case:
 
 
 def cases(machine: Machine) -> list[Case]:
-    """Uncompensated; compensated; compensated and held everywhere; compensated with the lash at both ends of its uncertainty."""
+    """Uncompensated; compensated; compensated and held everywhere; compensated with the lash at both ends of its
+    uncertainty.
+    """
 
     def both(make: Callable[[Axis], AxisCase]) -> Variant:
         return {letter: make(machine.axis(letter)) for letter in PLAN}
@@ -158,9 +162,9 @@ def _round(shape: Shape, predictor: Predictor) -> Feature:
     noise = walls[0].out_of_round
     rows.append(measure("out of round", 0.0, [max(ring.out_of_round - noise, 0.0) for ring in walls[1:]]))
     radius = shape.radius if shape.kind == "bore" else 0.5 * size
-    for k, letter in enumerate(PLAN):
+    for letter in PLAN:
         lengths = [_flat(radius, case.axes[letter]) for case in predictor.cases]
-        rows.append(measure(f"flat across {letter}", 0.0, lengths))
+        rows.append(measure(f"flat across {letter}", 0.0, lengths, counts=False))
     name = f"{shape.kind} {size:.3f} at X{shape.centre[0]:.3f} Y{shape.centre[1]:.3f}"
     return Feature(shape.kind, name, shape.lines, shape.centre, shape.depth, tuple(rows), drag_words(dragged))
 
@@ -215,7 +219,7 @@ def _arc(shape: Shape, predictor: Predictor) -> Feature:
     size = shape.radius + (shape.cutter if shape.side * predictor.path.sweep[shape.moves[0]] < 0.0 else -shape.cutter)
     rows = [
         measure("radius at its middle", size, [size + float(off[middle]) for off in outward]),
-        measure("largest error of form", 0.0, [float(np.max(np.abs(off))) for off in outward]),
+        measure("largest deviation", 0.0, [float(np.max(np.abs(off))) for off in outward]),
     ]
     name = f"arc radius {size:.3f} about X{shape.centre[0]:.3f} Y{shape.centre[1]:.3f}"
     return Feature("arc", name, shape.lines, shape.centre, shape.depth, tuple(rows), drag_words(dragged))

@@ -7,7 +7,8 @@ from collections.abc import Iterator, Sequence
 
 import numpy as np
 
-from gcodetool.inspection.audit_records import Feature, Floats, Measure, Shape
+from gcodetool.inspection.audit_records import Feature, Measure, Shape
+from gcodetool.inspection.cutting_records import Floats
 
 # walls whose directions differ by less than this are parallel, rad
 PARALLEL = math.radians(0.2)
@@ -19,10 +20,10 @@ Wall = tuple[Shape, Sequence[float], bool]
 """A wall, the place of its surface along its own normal in each case, and whether the cut drags an axis there."""
 
 
-def measure(name: str, intended: float, values: Sequence[float]) -> Measure:
+def measure(name: str, intended: float, values: Sequence[float], counts: bool = True) -> Measure:
     """A figure from its values: uncompensated first, then compensated, then the other compensated cases."""
     after = values[1:]
-    return Measure(name, intended, values[0], values[1], min(after), max(after))
+    return Measure(name, intended, values[0], values[1], min(after), max(after), counts)
 
 
 def drag_words(dragged: bool) -> str:
@@ -33,7 +34,8 @@ def drag_words(dragged: bool) -> str:
 def widths(walls: Sequence[Wall]) -> Iterator[Feature]:
     """Pockets and ribs: each wall with the nearest wall across the air before it, and across the material behind it.
 
-    With both normals pointing into the material, the sum of the two places is the width of a pocket, or minus that of a rib.
+    With both normals pointing into the material, the sum of the two places is the width of a pocket, or minus that of
+    a rib.
     """
     if len(walls) < 2:
         return
@@ -76,11 +78,15 @@ def _width(one: Wall, other: Wall, meant: float) -> Feature:
     name = f"{kind} {abs(meant):.3f} at X{middle[0]:.3f} Y{middle[1]:.3f}"
     row = measure("width", abs(meant), values)
     depth = max(one[0].depth, other[0].depth)
-    return Feature("width", name, (lines[0], lines[-1]), (middle[0], middle[1]), depth, (row,), drag_words(one[2] or other[2]))
+    return Feature(
+        "width", name, (lines[0], lines[-1]), (middle[0], middle[1]), depth, (row,), drag_words(one[2] or other[2])
+    )
 
 
 def hole_pairs(holes: Sequence[Shape], places: Sequence[tuple[Floats, list[Floats]]]) -> Iterator[Feature]:
-    """Spacings of each hole and its nearest neighbours; ``places`` are wanted and actual places, one entry for each hole."""
+    """Spacings of each hole and its nearest neighbours; ``places`` are wanted and actual places, one entry for each
+    hole.
+    """
     wanted = np.array([want for want, _ in places]).reshape(-1, 2)
     done: set[tuple[int, int]] = set()
     for k in range(len(holes)):
@@ -100,4 +106,6 @@ def _pair(one: Shape, other: Shape, here: tuple[Floats, list[Floats]], there: tu
     lines = sorted([*one.lines, *other.lines])
     name = f"holes X{here[0][0]:.3f} Y{here[0][1]:.3f} and X{there[0][0]:.3f} Y{there[0][1]:.3f}"
     at = float(middle[0]), float(middle[1])
-    return Feature("hole pair", name, (lines[0], lines[-1]), at, max(one.depth, other.depth), (measure("spacing", meant, values),))
+    return Feature(
+        "hole pair", name, (lines[0], lines[-1]), at, max(one.depth, other.depth), (measure("spacing", meant, values),)
+    )

@@ -2,30 +2,18 @@
 
 from __future__ import annotations
 
-import math
-
 import numpy as np
 import shapely
 
-from gcodetool.inspection.audit_records import Cutter, Cutters, Flags, Floats, Ints, Job, Path, Point, StockTaken
+from gcodetool.inspection.audit_records import Point, StockTaken
+from gcodetool.inspection.cutting_records import Cutters, Flags, Floats, Ints, Path
+from gcodetool.inspection.job_records import Cutter, Job
 from gcodetool.inspection.swept import PI, Circles, meet_segment
 
 # a stretch of feed motion that moves less than this in plan is no lateral cut
 NO_TRAVEL = 1e-3
-CIRCLE = 256
-"""Corners of a round outline; its sides lie at most 0.0075 % of its radius inside the circle."""
-
-
-def disc(x: float, y: float, radius: float) -> tuple[Point, ...]:
-    """A round outline."""
-    turn = 2.0 * math.pi / CIRCLE
-    return tuple((x + radius * math.cos(turn * k), y + radius * math.sin(turn * k)) for k in range(CIRCLE))
-
-
-def box(x0: float, y0: float, x1: float, y1: float) -> tuple[Point, ...]:
-    """A rectangular outline from two opposite corners."""
-    low, high = (min(x0, x1), min(y0, y1)), (max(x0, x1), max(y0, y1))
-    return low, (high[0], low[1]), high, (low[0], high[1])
+# sides of a quarter of a round corner
+QUARTER = 64
 
 
 def take_stock(job: Job, path: Path) -> StockTaken:
@@ -43,20 +31,25 @@ def take_stock(job: Job, path: Path) -> StockTaken:
 
 
 def guess_top(path: Path) -> tuple[float, str]:
-    """The top of the stock from the levels of the cuts: Z0, or one step above the highest level where Z0 lies below."""
+    """The top of the stock from the cuts: Z0 where they lie below it, else one step above the highest level."""
     plan = np.hypot(*(path.end[:, :2] - path.start[:, :2]).T)
-    lateral = ~path.rapid & ~path.turning & ((plan > NO_TRAVEL) | (path.plane == 1))
-    if not lateral.any():
-        down = ~path.rapid & ~path.turning & (path.end[:, 2] < path.start[:, 2])
-        above = bool(down.any()) and float(np.min(path.end[down, 2])) > 0.0
-        return (float(np.max(path.start[down, 2])), "where the plunges begin") if above else (0.0, "program zero")
-    z = 0.5 * (path.start[:, 2] + path.end[:, 2])
-    if path.length[lateral & (z > 0.0)].sum() <= 0.5 * path.length[lateral].sum():
+    feed = ~path.rapid & ~path.turning
+    lateral = feed & ((plan > NO_TRAVEL) | (path.plane == 1))
+    down = feed & ~lateral & (path.end[:, 2] < path.start[:, 2])
+    cuts = lateral if lateral.any() else down
+    if not cuts.any():
+        return 0.0, "program zero"
+    z = 0.5 * (path.start[:, 2] + path.end[:, 2]) if lateral.any() else path.end[:, 2]
+    if path.length[cuts & (z < 0.0)].sum() >= 0.5 * path.length[cuts].sum():
         return 0.0, "program zero, since most cuts lie below it"
     level = lateral & (np.abs(path.start[:, 2] - path.end[:, 2]) < 1e-6)
     heights = np.unique(np.round(path.end[level, 2], 4))
     if len(heights) > 1:
-        return float(2.0 * heights[-1] - heights[-2]), "one step above the highest level cut, since Z0 lies below the cuts"
+        return float(
+            2.0 * heights[-1] - heights[-2]
+        ), "one step above the highest level cut, since Z0 lies below the cuts"
+    if down.any():
+        return float(np.min(path.start[down, 2])), "where the plunges begin, since Z0 lies below the cuts"
     return float(np.max(path.start[lateral, 2])), "the highest point of the cuts, since Z0 lies below them"
 
 
@@ -70,7 +63,7 @@ def hull_of_cuts(path: Path, cutters: tuple[Cutter, ...], top: float) -> tuple[P
         mine = low & (path.tool == tool)
         points = np.concatenate([path.start[mine, :2], path.end[mine, :2], _round_points(path, mine)])
         hull = shapely.MultiPoint(points).convex_hull
-        parts.append(hull.buffer(cutters[tool].radius, quad_segs=CIRCLE // 4))
+        parts.append(hull.buffer(cutters[tool].radius, quad_segs=QUARTER))
     if not parts:
         return ()
     whole = shapely.union_all(parts).convex_hull
@@ -120,9 +113,7 @@ class Outline:
         boxes = shapely.box(circles.x - r, circles.y - r, circles.x + r, circles.y + r)
         row, side = self._tree.query(boxes)
         part, near = self.sides[side], circles.of(row)
-        cuts = meet_segment(
-            near.radius, *near.framed(part[:, 0], part[:, 1]), *near.framed(part[:, 2], part[:, 3])
-        )
+        cuts = meet_segment(near.radius, *near.framed(part[:, 0], part[:, 1]), *near.framed(part[:, 2], part[:, 3]))
         every = np.arange(len(r))
         rows = np.concatenate([row, row, every, every])
         angle = np.concatenate([*cuts, np.zeros(len(r)), np.full(len(r), PI)])

@@ -1,13 +1,14 @@
 """Where a cutter's circle lies inside areas swept by earlier cutters: exact angles, for many pairs at once.
 
-A *piece* is a short stretch of a path of the cutter's tip: a straight line (sloping in Z or not) or an arc in the XY plane of at
-most a sixth of a turn.  At a height ``h`` a piece has swept, from above, all points within the cutter's radius of the part of it
-that lies at or below ``h``: a capsule (a tapering one where the radius changes on the way) or a part of a ring with round ends.
+A *piece* is a short stretch of a path of the cutter's tip: a straight line (sloping in Z or not) or an arc in the XY
+plane of at most a sixth of a turn.  At a height ``h`` a piece has swept, from above, all points within the cutter's
+radius of the part of it that lies at or below ``h``: a capsule (a tapering one where the radius changes on the way)
+or a part of a ring with round ends.
 
-Angles are those of milling (Martellotti, Trans. ASME 63, 1941; Altintas, Manufacturing Automation, ch. 2, both from memory): phi
-is measured clockwise seen from above, from the left of the feed: 0 left, pi/2 ahead, pi right.  Only 0..pi, the leading half of
-the circle, can meet material.  Here every pair is turned into a frame (left, ahead) about the centre of the circle, so that phi
-is the ordinary polar angle in it.
+Angles are those of milling (Martellotti, Trans. ASME 63, 1941; Altintas, Manufacturing Automation, ch. 2, both from
+memory): phi is measured clockwise seen from above, from the left of the feed: 0 left, pi/2 ahead, pi right.  Only
+0..pi, the leading half of the circle, can meet material.  Here every pair is turned into a frame (left, ahead) about
+the centre of the circle, so that phi is the ordinary polar angle in it.
 
 Lengths in mm, angles in radians.  One row of an array is one piece, one pair or one interval.
 """
@@ -17,7 +18,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from gcodetool.inspection.audit_records import BALL, FLAT, Cutters
+from gcodetool.inspection.cutting_records import Cutters
+from gcodetool.inspection.job_records import BALL, FLAT
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -102,9 +104,7 @@ class Circles:
         return v * self.fx - u * self.fy, u * self.fx + v * self.fy
 
 
-def covered(
-    circles: Circles, pieces: Floats, height: Floats, cutters: Cutters
-) -> tuple[Ints, Floats, Floats]:
+def covered(circles: Circles, pieces: Floats, height: Floats, cutters: Cutters) -> tuple[Ints, Floats, Floats]:
     """The intervals of phi of each circle that its piece has swept at its height: ``(row, first, last)``.
 
     Row k of all arguments is one pair.  A row may have no interval or several; touching intervals are not joined.

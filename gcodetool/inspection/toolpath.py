@@ -9,7 +9,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from gcodetool.errors import SheetError
-from gcodetool.inspection.audit_records import Cutter, Flags, Floats, Ints, Job, Path
+from gcodetool.inspection.cutting_records import Flags, Floats, Ints, Path
+from gcodetool.inspection.job_records import Cutter, Job
 from gcodetool.inspection.swept import A0, COLUMNS, CX, CY, RC, SWEEP, TOOL, X0, X1, Y0, Y1, Z0, Z1
 from gcodetool.motion.controller import Controller
 from gcodetool.motion.moves import ORDER, Event, Move, Setup
@@ -29,8 +30,8 @@ _FINE = 1e-9
 def read_path(blocks: Iterable[Block], job: Job, units: str | None = None) -> Path:
     """All moves of a program.
 
-    Every axis counts as standing at program zero, at an unknown place, before the program says otherwise.  Raises Refusal,
-    and SheetError where a feed motion uses a tool that the job does not know.
+    Every axis counts as standing at program zero, at an unknown place, before the program says otherwise.  Raises
+    Refusal, and SheetError where a feed motion uses a tool that the job does not know.
     """
     controller = Controller(Setup(units=units, offsets=_offsets(job.zero), unplaced=ORDER))
     rows: list[tuple[object, ...]] = []
@@ -104,7 +105,9 @@ def _row(move: Move, tool: int, offset: float, unknown: bool, chain: int, job: J
     )  # fmt: skip
 
 
-def _lowered(shape: tuple[float, ...], axes: tuple[int, int], offset: float) -> tuple[float, float, float, float, float]:
+def _lowered(
+    shape: tuple[float, ...], axes: tuple[int, int], offset: float
+) -> tuple[float, float, float, float, float]:
     """The centre of an arc in a plane with Z, measured to the tip."""
     first, second = (shape[k] - (offset if axes[k] == 2 else 0.0) for k in (0, 1))
     return first, second, shape[2], shape[3], shape[4]
@@ -127,14 +130,13 @@ def _feed(move: Move, length: float, speed: float | None, job: Job) -> float:
 def _columns(rows: list[tuple[object, ...]], events: tuple[tuple[int, int, str], ...], tools: tuple[str, ...]) -> Path:
     table = np.array(rows, float).reshape(len(rows), 23)
     whole = table[:, [0, 8, 17, 18]].astype(np.int64)
-    path = Path(
+    return Path(
         line=whole[:, 0], rapid=table[:, 1] > 0.0, start=table[:, 2:5].copy(), end=table[:, 5:8].copy(),
         plane=whole[:, 1], centre=table[:, 9:11].copy(), radius=table[:, 11].copy(), angle=table[:, 12].copy(),
         sweep=table[:, 13].copy(), length=table[:, 14].copy(), feed=table[:, 15].copy(), speed=table[:, 16].copy(),
         sense=whole[:, 2], tool=whole[:, 3], length_offset=table[:, 19].copy(), turning=table[:, 20] > 0.0,
         unplaced=table[:, 21] > 0.0, chain=table[:, 22].astype(np.int64), events=events, tool_words=tools,
     )  # fmt: skip
-    return path
 
 
 def cut_up(path: Path, chosen: Ints, longest: Floats, steepest: Floats) -> tuple[Floats, Ints, Floats, Floats]:

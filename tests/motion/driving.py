@@ -45,14 +45,13 @@ def moves(program: str | bytes, setup: Setup | None = None) -> list[Move]:
 
 
 def mm(position: tuple[int, ...], axes: str = "XYZ") -> Point:
-    """A position of quanta in mm."""
-    return tuple(position[ORDER.index(letter)] / QUANTA_PER_MM for letter in axes)
+    """A position of quanta in mm, to a millionth."""
+    return tuple(round(position[ORDER.index(letter)] / QUANTA_PER_MM, 6) for letter in axes)
 
 
 def steps(program: str, setup: Setup | None = None, axes: str = "XYZ") -> list[Step]:
     """The moves that move something, in mm."""
-    found = [Step(m.rapid, mm(m.end, axes), m.line) for m in moves(program, setup) if m.start != m.end or m.arc]
-    return found
+    return [Step(m.rapid, mm(m.end, axes), m.line) for m in moves(program, setup) if m.start != m.end or m.arc]
 
 
 def ends(program: str, setup: Setup | None = None, axes: str = "XYZ") -> list[Point]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import math
 
 import pytest
@@ -50,7 +51,9 @@ def test_the_radius_arc_of_the_table_10_session() -> None:
         ("X79.5 Y0", "G2 Y5 J2.5", (79.5, 2.5), 2.5, -180),
     ],
 )
-def test_arcs_of_the_lettering_example(start: str, block: str, centre: tuple[float, float], radius: float, sweep: float) -> None:
+def test_arcs_of_the_lettering_example(
+    start: str, block: str, centre: tuple[float, float], radius: float, sweep: float
+) -> None:
     """NISTIR 6556 appendix C.1; centres and sweeps derived from its blocks."""
     arc = arc_of(f"G21 G0 {start}\n{block}")
     assert arc.centre == pytest.approx(centre, abs=5e-5)
@@ -149,8 +152,8 @@ def test_quadrant_points_are_where_a_densely_sampled_arc_turns(first: float, swe
     count = max(8, math.ceil(abs(sweep) / 0.002))
     points = [arc.point(k / count) for k in range(count + 1)]
     for axis in (0, 1):
-        steps = [b[axis] - a[axis] for a, b in zip(points, points[1:], strict=False) if abs(b[axis] - a[axis]) > 1e-12]
-        turns = sum(one * two < 0 for one, two in zip(steps, steps[1:], strict=False))
+        steps = [b[axis] - a[axis] for a, b in itertools.pairwise(points) if abs(b[axis] - a[axis]) > 1e-12]
+        turns = sum(one * two < 0 for one, two in itertools.pairwise(steps))
         shares = [share for share, which in arc.quadrants() if which == axis]
         edge = 1.5 / count
         inner = sum(edge < share < 1 - edge for share in shares)
@@ -176,7 +179,8 @@ def test_a_chord_longer_than_the_diameter_by_rounding_only_is_a_half_turn() -> N
 
 
 @pytest.mark.parametrize(
-    ("start", "end", "radius"), [((0, 0), (0, 0), 5.0), ((0, 0), (1, 0), 0.0), ((0, 0), (10.5, 0), 5.0), ((0, 0), (30, 0), -5.0)]
+    ("start", "end", "radius"),
+    [((0, 0), (0, 0), 5.0), ((0, 0), (1, 0), 0.0), ((0, 0), (10.5, 0), 5.0), ((0, 0), (30, 0), -5.0)],
 )
 def test_words_that_make_no_arc_by_radius(start: tuple[float, float], end: tuple[float, float], radius: float) -> None:
     """NISTIR 6556 3.5.3.1: an error where the end is the start, and where no circle fits."""

@@ -128,8 +128,12 @@ REFUSED = [
 ]
 
 
-@pytest.mark.parametrize(("program", "line", "words", "reason"), REFUSED, ids=[row[0].replace("\n", "|") for row in REFUSED])
-def test_what_is_refused_is_named_with_line_word_reason_and_way_out(program: str, line: int, words: str, reason: str) -> None:
+@pytest.mark.parametrize(
+    ("program", "line", "words", "reason"), REFUSED, ids=[row[0].replace("\n", "|") for row in REFUSED]
+)
+def test_what_is_refused_is_named_with_line_word_reason_and_way_out(
+    program: str, line: int, words: str, reason: str
+) -> None:
     refusal = refusal_of(program) if "mm or inches" not in reason else _without_units(program)
     assert (refusal.line, refusal.words) == (line, words)
     assert reason in refusal.reason

@@ -12,7 +12,7 @@ AT_123 = Setup(units="mm", start=place(X=1, Y=2, Z=3))
 
 def shown(found: list[Step]) -> list[str]:
     """Moves as the standard prints them: T for a traverse, F for a feed."""
-    return [("T" if s.rapid else "F") + "({:g},{:g},{:g})".format(*(round(v, 6) + 0.0 for v in s.end)) for s in found]
+    return [("T" if s.rapid else "F") + "({:g},{:g},{:g})".format(*s.end) for s in found]
 
 
 def holes(program: str, setup: Setup | None = None) -> list[tuple[str, str]]:
@@ -22,7 +22,7 @@ def holes(program: str, setup: Setup | None = None) -> list[tuple[str, str]]:
         return move.hole or ("T" if move.rapid else "F")
 
     found = [move for move in moves(program, setup) if move.start != move.end]
-    return [(what(m), "({:g},{:g},{:g})".format(*(round(v, 6) + 0.0 for v in mm(m.end)))) for m in found]
+    return [(what(m), "({:g},{:g},{:g})".format(*mm(m.end))) for m in found]
 
 
 # ---- published examples ----------------------------------------------------------------------------------------------
@@ -30,7 +30,12 @@ def holes(program: str, setup: Setup | None = None) -> list[tuple[str, str]]:
 
 def test_example_1() -> None:
     """NISTIR 6556 3.5.16.2, first example, from (1,2,3); its move list, in which the tool returns to the old Z."""
-    assert shown(steps("G21 G90 G81 G98 X4 Y5 Z1.5 R2.8", AT_123)) == ["T(4,5,3)", "T(4,5,2.8)", "F(4,5,1.5)", "T(4,5,3)"]
+    assert shown(steps("G21 G90 G81 G98 X4 Y5 Z1.5 R2.8", AT_123)) == [
+        "T(4,5,3)",
+        "T(4,5,2.8)",
+        "F(4,5,1.5)",
+        "T(4,5,3)",
+    ]
 
 
 def test_example_2() -> None:
@@ -76,7 +81,8 @@ HIGH = Setup(units="mm", start=place(Z=10))
 
 
 @pytest.mark.parametrize(
-    ("word", "out"), [("G81", "T"), ("G82", "T"), ("G84", "out"), ("G85", "out"), ("G86", "T"), ("G88", "T"), ("G89", "out")]
+    ("word", "out"),
+    [("G81", "T"), ("G82", "T"), ("G84", "out"), ("G85", "out"), ("G86", "T"), ("G88", "T"), ("G89", "out")],
 )
 def test_a_plain_cycle_goes_in_at_feed_and_out_as_the_standard_says(word: str, out: str) -> None:
     assert holes(f"G21 {word} X1 Y2 Z-3 R1 P0.5 F100", HIGH) == [
@@ -132,7 +138,10 @@ def test_back_boring() -> None:
         # another motion word ends it too
         ("G99 G81 X1 Z-1 R1\nG0 X5", ["(1,0,10)", "(1,0,1)", "(1,0,-1)", "(1,0,1)", "(5,0,1)"]),
         # words alone make no hole; the next hole uses them
-        ("G99 G81 X1 Z-1 R1\nR2\nX2", ["(1,0,10)", "(1,0,1)", "(1,0,-1)", "(1,0,1)", "(1,0,2)", "(2,0,2)", "(2,0,-1)", "(2,0,2)"]),
+        (
+            "G99 G81 X1 Z-1 R1\nR2\nX2",
+            ["(1,0,10)", "(1,0,1)", "(1,0,-1)", "(1,0,1)", "(1,0,2)", "(2,0,2)", "(2,0,-1)", "(2,0,2)"],
+        ),
     ],
 )
 def test_sticky_words_and_the_end_of_a_cycle(program: str, expected: list[str]) -> None:

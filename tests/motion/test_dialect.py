@@ -32,7 +32,7 @@ USABLE = [word for word in GROUP_OF if word not in OUT_OF_SCOPE]
 REFUSED = [code for code in (*G_CODES.values(), *M_CODES.values()) if code.reason]
 
 
-def sorted_words(*words: str):  # noqa: ANN201 - the record is what the test looks at
+def sorted_words(*words: str):
     return g_words(tuple(word[1:] for word in words))
 
 
@@ -141,7 +141,16 @@ def test_other_words_change_no_mode_that_motion_hangs_on(word: str) -> None:
 
 @pytest.mark.parametrize(
     ("number", "word"),
-    [("0", "G0"), ("00", "G0"), ("01", "G1"), ("1.", "G1"), ("59.1", "G59.1"), ("59.10", "G59.1"), (" 2 8", "G28"), ("+3", "G3")],
+    [
+        ("0", "G0"),
+        ("00", "G0"),
+        ("01", "G1"),
+        ("1.", "G1"),
+        ("59.1", "G59.1"),
+        ("59.10", "G59.1"),
+        (" 2 8", "G28"),
+        ("+3", "G3"),
+    ],
 )
 def test_codes_are_known_however_they_are_spelled(number: str, word: str) -> None:
     assert code_word("G", number) == word
@@ -151,7 +160,7 @@ def test_codes_are_known_however_they_are_spelled(number: str, word: str) -> Non
 
 
 @pytest.mark.parametrize("code", REFUSED, ids=lambda code: code.word)
-def test_a_refused_code_is_refused_with_line_word_reason_and_way_out(code) -> None:  # noqa: ANN001
+def test_a_refused_code_is_refused_with_line_word_reason_and_way_out(code) -> None:
     with pytest.raises(Refusal) as caught:
         command_of(f"N10 {code.word} X1")
     refusal = caught.value
@@ -160,7 +169,9 @@ def test_a_refused_code_is_refused_with_line_word_reason_and_way_out(code) -> No
     assert str(refusal) == f"line 1: {code.word}: {code.reason}. {code.way_out}."
 
 
-@pytest.mark.parametrize("word", ["G5", "G6", "G7", "G12", "G33", "G44", "G68.2", "G96", "G100", "G92.4", "G1.5", "G999"])
+@pytest.mark.parametrize(
+    "word", ["G5", "G6", "G7", "G12", "G33", "G44", "G68.2", "G96", "G100", "G92.4", "G1.5", "G999"]
+)
 def test_an_unknown_g_word_is_refused(word: str) -> None:
     """Some move axes on some machines; none can be passed blindly."""
     with pytest.raises(Refusal) as caught:

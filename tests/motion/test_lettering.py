@@ -6,10 +6,12 @@ Strokes that these leave open (their X, and the slant of the W) are ours, so pat
 
 from __future__ import annotations
 
+import itertools
+
 from gcodetool.lash.reversals import reversals
+from gcodetool.motion.moves import Setup
 from gcodetool.program.blocks import blocks_of
 from tests.motion.driving import moves, place
-from gcodetool.motion.moves import Setup
 
 PROGRAM = b"""n0010 g21 g0 x0 y0 z50
 n0020 t1 m6 m3 f20 s4000
@@ -93,7 +95,7 @@ def test_directions_alternate_on_each_axis() -> None:
     found = list(reversals(blocks_of(PROGRAM), START, {}))
     for axis in "XYZ":
         turns = [r.direction for r in found if r.axis == axis]
-        assert all(one == -two for one, two in zip(turns, turns[1:], strict=False))
+        assert all(one == -two for one, two in itertools.pairwise(turns))
 
 
 def test_turns_inside_the_arcs_are_told_from_those_between_blocks() -> None:
@@ -103,11 +105,16 @@ def test_turns_inside_the_arcs_are_told_from_those_between_blocks() -> None:
     for r in found:
         if r.in_arc:
             lines[r.line, r.axis] += 1
-    e, o, second_o, r_arc, d = (PROGRAM[: PROGRAM.index(n)].count(b"\n") + 1 for n in (b"n0180", b"n0300", b"n0410", b"n0470", b"n0570"))
+    e, o, second_o, r_arc, d = (
+        PROGRAM[: PROGRAM.index(n)].count(b"\n") + 1 for n in (b"n0180", b"n0300", b"n0410", b"n0470", b"n0570")
+    )
     assert lines == {
-        **{(e, "X"): 1, (e, "Y"): 1},
-        **{(o, "X"): 2, (o, "Y"): 1},
-        **{(second_o, "X"): 2, (second_o, "Y"): 1},
+        (e, "X"): 1,
+        (e, "Y"): 1,
+        (o, "X"): 2,
+        (o, "Y"): 1,
+        (second_o, "X"): 2,
+        (second_o, "Y"): 1,
         (r_arc, "Y"): 1,
         (d, "X"): 1,
     }

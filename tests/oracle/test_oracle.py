@@ -372,6 +372,16 @@ def test_the_mismatch_of_the_original_may_be_let_off() -> None:
     assert [report.ok() for report in reports] == [False, True]
 
 
+def test_a_hole_may_be_settled_before_its_cycle() -> None:
+    """The place of the first hole is reached by a settle, then the cycle's own traverse moves nothing."""
+    original = "G21 G90 F100\nG0 Z5\nG99 G81 X5 Y5 Z-2 R1\nX10\nG80\nG0 Z5\n"
+    start = "G21 G90 F100\nG0 Z5.6\nZ5\nX5.6 Y5.6\n"
+    end = "G99 G81 X5 Y5 Z-2 R1\nX10.1\nG80\nG0 Z5.1\n"
+    assert judge(start + "X5 Y5\n" + end, original).ok(1e-6)
+    assert judge(start + "X5 Y4.8\nX5 Y5\n" + end, original).feed.value > 0.09
+    assert not judge(start.replace("X5.6 Y5.6\n", "") + end, original).ok()
+
+
 def test_inverse_time_shares_add_up() -> None:
     original = "G21 G90\nG0 X10 Y0 Z0\nG93 G3 X0 Y10 I-10 F2\nG3 X-10 Y0 J-10 F2\nG94\n"
     split = "G93 G3 X0 Y10 I-10 F2\nG3 X-5 Y8.6603 J-10 F6\nG3 X-10 Y0 I5 J-8.6603 F3\nG94\n"

@@ -186,12 +186,20 @@ class _Splitter:
             self.rapid.append((stroke, self.doubt.loose))
 
     def add_hole(self, stroke: Stroke) -> None:
-        if stroke.motion.hole != self.hole:
+        """The traverses to a hole are rapids like others; the hole begins with its first feed."""
+        motion = stroke.motion
+        if motion.hole != self.hole:
             self.close()
-        self.hole = stroke.motion.hole
-        self.open("hole").strokes.append(stroke)
-        known = self.doubt.without(stroke.motion.named)
-        self.doubt = Doubt(known.unsure, known.soft | {stroke.motion.normal}, known.lost)
+            self.hole = motion.hole
+        begun = self.unit is not None and self.unit.kind == "hole"
+        if motion.kind == "rapid" and not begun and _moves(stroke):
+            self.close()
+        known = self.doubt.without(motion.named)
+        self.doubt = Doubt(known.unsure, known.soft | {motion.normal}, known.lost)
+        if motion.kind == "feed" or begun:
+            self.open("hole").strokes.append(stroke)
+        elif _moves(stroke):
+            self.rapid.append((stroke, self.doubt.loose))
 
 
 def split(track: Track, start: Iterable[float], unsure: Axes) -> list[Unit]:

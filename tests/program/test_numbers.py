@@ -110,7 +110,9 @@ def test_a_program_of_words_adds_up_exactly() -> None:
     assert sum([0.0001] * 10_000) != 1.0
 
 
-@pytest.mark.parametrize(("value", "quanta"), [("0.12", 1_200_000_000), ("0", 0), ("1E-10", 1), ("25.4", 254_000_000_000)])
+@pytest.mark.parametrize(
+    ("value", "quanta"), [("0.12", 1_200_000_000), ("0", 0), ("1E-10", 1), ("25.4", 254_000_000_000)]
+)
 def test_decimal_to_quanta(value: str, quanta: int) -> None:
     assert decimal_to_quanta(Decimal(value)) == quanta
 

@@ -111,7 +111,7 @@ def test_a_word_less_leaves_comments_and_slash(text: str, letter: str, result: s
     pieces = split(text)
     taken = join_words(without_words(pieces, [shape_of(pieces).at[letter]]))
     assert " ".join(taken.split()) == " ".join(result.split())
-    assert [p for p in split(taken)[1::3]] == [p for p in pieces[1::3] if p != letter]
+    assert list(split(taken)[1::3]) == [p for p in pieces[1::3] if p != letter]
 
 
 @pytest.mark.parametrize(

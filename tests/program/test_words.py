@@ -160,7 +160,12 @@ def test_shape_tells_where_the_words_stand() -> None:
     shape = shape_of(pieces)
     assert [pieces[i] for i in shape.g] == ["1", "17"]
     assert [pieces[i] for i in shape.m] == ["8"]
-    assert {letter: pieces[i] for letter, i in shape.at.items() if letter not in "GM"} == {"N": "5", "X": "1", "Y": "2", "F": "3"}
+    assert {letter: pieces[i] for letter, i in shape.at.items() if letter not in "GM"} == {
+        "N": "5",
+        "X": "1",
+        "Y": "2",
+        "F": "3",
+    }
     assert shape.axes == (("X", shape.at["X"]), ("Y", shape.at["Y"]))
     assert shape.lower and not shape.plain and shape.twice == ""
 
@@ -173,7 +178,9 @@ def test_plain_blocks_hold_moves_and_nothing_else(text: str, plain: bool) -> Non
     assert shape_of(split(text)).plain is plain
 
 
-@pytest.mark.parametrize(("text", "letter"), [("X1 X2", "X"), ("G1 F1 X1 F2", "F"), ("G1 G17 M3 M8", ""), ("X1 Y1", "")])
+@pytest.mark.parametrize(
+    ("text", "letter"), [("X1 X2", "X"), ("G1 F1 X1 F2", "F"), ("G1 G17 M3 M8", ""), ("X1 Y1", "")]
+)
 def test_a_letter_that_stands_twice_is_named(text: str, letter: str) -> None:
     """NISTIR 6556 3.3.2: any letter but G and M at most once."""
     assert shape_of(split(text)).twice == letter
@@ -187,7 +194,9 @@ def test_axes_come_in_the_order_of_iso_841_whatever_their_order_in_the_block() -
 def test_shapes_are_alike_for_more_blocks_than_are_remembered() -> None:
     """The memory of shapes is bounded; what fell out is made anew."""
     for k in range(5000):
-        letters = string.ascii_uppercase[k % 26] + string.ascii_uppercase[k // 26 % 26] + string.ascii_uppercase[k // 676]
+        letters = (
+            string.ascii_uppercase[k % 26] + string.ascii_uppercase[k // 26 % 26] + string.ascii_uppercase[k // 676]
+        )
         shape_of(split("".join(f"{letter}1" for letter in letters)))
     assert [letter for letter, _ in shape_of(split("X1 Y2")).axes] == ["X", "Y"]
 
@@ -197,7 +206,15 @@ def test_shapes_are_alike_for_more_blocks_than_are_remembered() -> None:
 
 @pytest.mark.parametrize(
     ("text", "deletable"),
-    [("/G1 X1", True), ("  /G1 X1", True), ("/2 G1 X1", True), ("G1 X1", False), ("(/) G1", False), ("; /", False), ("/", True)],
+    [
+        ("/G1 X1", True),
+        ("  /G1 X1", True),
+        ("/2 G1 X1", True),
+        ("G1 X1", False),
+        ("(/) G1", False),
+        ("; /", False),
+        ("/", True),
+    ],
 )
 def test_block_delete_is_the_slash_that_leads(text: str, deletable: bool) -> None:
     assert is_deletable(split(text)) is deletable
