@@ -25,6 +25,7 @@ from gcodetool.cli.options import (
 )
 from gcodetool.cli.stated import (
     BlockDeleteOption,
+    HoleOvershootOption,
     LengthOption,
     LookAheadOption,
     OffsetOption,
@@ -33,13 +34,16 @@ from gcodetool.cli.stated import (
 )
 from gcodetool.cli.streams import ENCODING, Draft, OutputRefused, Source, draft, open_source, standard_output
 from gcodetool.cli.terminal import say, watched
-from gcodetool.errors import ProofError
+from gcodetool.errors import ProofError, SheetError
 from gcodetool.lash.compensate import MARK, Compensator
 from gcodetool.lash.running import Settings
 from gcodetool.lash.tally import Tally
+from gcodetool.lash.reversals import statistics
 from gcodetool.machine import Machine
+from gcodetool.motion.moves import ORDER, Setup
 from gcodetool.program.blocks import blocks
-from gcodetool.report.summaries import compensation_lines, lash_line, proof_lines
+from gcodetool.program.numbers import QUANTA_PER_MM, decimal_to_quanta
+from gcodetool.report.summaries import CAUTIONS, compensation_lines, lash_line, proof_lines
 
 
 def command(
@@ -58,6 +62,8 @@ def command(
     length: LengthOption = None,
     block_delete: BlockDeleteOption = None,
     look_ahead: LookAheadOption = 32,
+    hole_overshoot: HoleOvershootOption = None,
+    stops: Annotated[bool, typer.Option("--stops", help="List every take-up that stops the tool inside the cut.")] = False,
     live: Annotated[
         bool, typer.Option("--live", help="Send each line as soon as it can be, without the proof; for a live link.")
     ] = False,
@@ -74,7 +80,8 @@ def command(
         machine, lash=lash, datum=datum, ripple=ripple, units=units, take_up_feed=take_up_feed,
         settle_margin=settle_margin, decimals=decimals, lash_needed=True,
     )  # fmt: skip
-    settings = settings_from(start, offset, length, block_delete, look_ahead)
+    settings = settings_from(start, offset, length, block_delete, look_ahead, hole_overshoot)
+    _check_overshoot(settings, sheet)
     tell = (lambda lines: None) if quiet else (lambda lines: say("\n".join(lines)))
     if live:
         if output != "-":
@@ -84,7 +91,14 @@ def command(
         tell(compensation_lines(tally, sheet, None))
         return
     with draft(output, force=force, inputs=[program]) as result, open_source(program, name) as source:
-        _whole(source, result, sheet, settings, again, tell)
+        _whole(source, result, sheet, settings, again, stops, tell)
+
+
+def _check_overshoot(settings: Settings, machine: Machine) -> None:
+    for letter in "XY":
+        lash = machine.axis(letter).lash
+        if settings.hole_overshoot and decimal_to_quanta(lash) > settings.hole_overshoot:
+            raise SheetError(f"--hole-overshoot is less than the lash of {letter}, {lash} mm; it must be more")
 
 
 def header(machine: Machine) -> str:
@@ -95,7 +109,7 @@ def header(machine: Machine) -> str:
 
 
 def _whole(
-    source: Source, result: Draft, machine: Machine, settings: Settings, again: bool, tell: Callable[[list[str]], None]
+    source: Source, result: Draft, machine: Machine, settings: Settings, again: bool, stops: bool, tell: Callable[[list[str]], None]
 ) -> None:
     from gcodetool.inspection.verify import verify
 
@@ -108,6 +122,7 @@ def _whole(
             held.clear()
 
     rewriting = Compensator(machine, settings, write, header(machine), again)
+    rewriting.tally.keep_stops = stops
     tally = rewriting.rewrite(blocks(watched(source.lines(), source.size, "rewriting")))
     result.write("".join(held).encode(ENCODING))
     verdict = verify(
@@ -116,8 +131,33 @@ def _whole(
     if not verdict.holds:
         found = "\n".join(proof_lines(verdict))
         raise ProofError(f"the rewritten program fails its own proof, so it is not let out\n{found}")
+    lines = compensation_lines(tally, machine, verdict)
+    if settings.hole_overshoot:
+        lines[-len(CAUTIONS) : -len(CAUTIONS)] = [_prove_holes(source, result, machine, settings)]
+    if any(axis.ripple for axis in machine.axes.values()):
+        lines[-len(CAUTIONS) : -len(CAUTIONS)] = [_passed_over(source, machine)]
     result.release()
-    tell(compensation_lines(tally, machine, verdict))
+    tell(lines)
+
+
+def _prove_holes(source: Source, result: Draft, machine: Machine, settings: Settings) -> str:
+    """Show that the place of every hole holds for any lash up to the overshoot; raises ProofError where it does not."""
+    from gcodetool.inspection.hole_places import worst_hole
+    from gcodetool.inspection.verify import TOLERANCE_MM
+
+    found = worst_hole(lambda: blocks(source.lines()), lambda: blocks(result.lines()), machine, settings)
+    reach = settings.hole_overshoot / QUANTA_PER_MM
+    if found.distance > TOLERANCE_MM:
+        line = f"line {found.lines[0]} is off by {found.distance:.4f} mm for a lash between 0 and {reach:g} mm"
+        raise ProofError(f"the hole at {line}, so the result is not let out")
+    return f"holes: {found.count} places, off by at most {found.distance:.4f} mm for any true lash from 0 to {reach:g} mm"
+
+
+def _passed_over(source: Source, machine: Machine) -> str:
+    ripple = {letter: decimal_to_quanta(axis.ripple) for letter, axis in machine.axes.items() if axis.ripple}
+    setup = Setup(units=machine.units, unplaced=ORDER)
+    saved = {a.axis: a.suppressed for a in statistics(blocks(source.lines()), setup, ripple) if a.axis in ripple}
+    return "ripple: take-ups saved: " + ", ".join(f"{letter} {count}" for letter, count in saved.items())
 
 
 def _live(source: Source, machine: Machine, settings: Settings, again: bool) -> Tally:

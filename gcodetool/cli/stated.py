@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Sequence
-from decimal import Decimal
+from decimal import Decimal, InvalidOperation
 from typing import Annotated
 
 import typer
@@ -41,6 +41,14 @@ LookAheadOption = Annotated[
     int,
     typer.Option("--look-ahead", metavar="N", min=0, max=10_000, help="Blocks held back at most to make a take-up in air."),
 ]
+HoleOvershootOption = Annotated[
+    str | None,
+    typer.Option(
+        "--hole-overshoot",
+        metavar="MM",
+        help="Reach every hole from the datum side, going this far past it first, so that its place does not hang on the lash.",
+    ),
+]
 
 _START = re.compile(r"([A-Za-z])=([-+]?(?:\d+\.?\d*|\.\d+))?([-+])?")
 _OFFSET = re.compile(r"([Gg]\d+(?:\.\d)?):([A-Za-z])=([-+]?(?:\d+\.?\d*|\.\d+))")
@@ -53,6 +61,7 @@ def settings_from(
     length: Sequence[str] | None,
     block_delete: str | None,
     look_ahead: int,
+    hole_overshoot: str | None = None,
 ) -> Settings:
     """What the operator states, read; raises SheetError with the way to write it."""
     if block_delete not in (None, "on", "off"):
@@ -67,7 +76,20 @@ def settings_from(
         lengths=dict(_length(text) for text in length or ()),
         look_ahead=look_ahead,
         block_delete=None if block_delete is None else block_delete == "on",
+        hole_overshoot=_overshoot(hole_overshoot),
     )
+
+
+def _overshoot(text: str | None) -> int:
+    if text is None:
+        return 0
+    try:
+        value = Decimal(text)
+    except InvalidOperation:
+        raise SheetError(f"--hole-overshoot {text}: write a length in mm, as 0.5") from None
+    if not 0 < value <= 20:
+        raise SheetError(f"--hole-overshoot {text}: write a length in mm, above 0 and at most 20")
+    return decimal_to_quanta(value)
 
 
 def _letter(text: str, option: str) -> str:

@@ -113,7 +113,8 @@ def _limit_findings(
         yield findings.finding(304, line(hit.move), f"the cutter comes {hit.value:.3f} mm into {hit.name}")
     fast = limits.too_fast(path, machine)
     if fast:
-        text = f"axis {fast[0].name} is asked for {100 * fast[0].value:.0f} % of its largest feed (worst of {len(fast)} moves)"
+        share = f"{100 * fast[0].value:.0f} % of its largest feed (worst of {len(fast)} moves)"
+        text = f"axis {fast[0].name} is asked for {share}"
         yield findings.finding(305, line(fast[0].move), text, count=len(fast))
     for hit in limits.speeds(path, job):
         code = 307 if hit.name.startswith("marked") else 306
@@ -213,15 +214,17 @@ def _assumptions(job: Job, sized: list[Feature]) -> Iterator[str]:
     material = job.material
     if material is not None:
         yield (
-            f"Forces are estimates of the mean over a turn for {material.name} ({material.source}): true values lie between "
-            f"{material.low:g} and {material.high:g} times the figures. A sharp edge, no runout, no chatter, the programmed feed "
-            "are assumed; a dull edge doubles them. They are no proof that a cut is safe."
+            f"Forces are estimates of the mean over a turn for {material.name} ({material.source}): expect "
+            f"{material.low:g} to {material.high:g} times the figures. A sharp edge, no runout, no chatter and the "
+            "programmed feed are assumed; a dull edge doubles them. They are no proof that a cut is safe."
         )
     yield (
-        "Labels and engagement assume the stock and cutter diameters stated above, a rigid cutter, and that all that was cut is gone."
+        "Labels and engagement assume the stock and the cutter diameters stated here, a rigid cutter, and that all that "
+        "was cut is gone."
     )
     if sized:
         yield (
-            "Sizes are predictions of the lash model alone: the lash entered, friction holding the axes except where a drag is told, "
-            "no deflection, no thermal growth, cutter diameter as stated. Ranges cover the stated uncertainty of the lash."
+            "Sizes are estimates of the lash model alone: the lash entered, friction holding the axes except where a drag "
+            "is told, no deflection, no thermal growth, cutter diameter as stated. The range of a size covers the stated "
+            "uncertainty of the lash and dragging, nothing else."
         )

@@ -177,9 +177,7 @@ class AxisEnvelope:
 
 @dataclass(frozen=True, slots=True)
 class MoveRow:
-    """One feed motion in figures: means over its cutting length; angles in degrees, ``removed`` in mm^3, nan for
-    none.
-    """
+    """One feed motion: means over its cutting length; angles in degrees, ``removed`` in mm^3, nan for none."""
 
     line: int
     kind: str

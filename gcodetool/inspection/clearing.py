@@ -90,9 +90,7 @@ class Clearing:
     """The cells, worked through block by block of pieces: ``begin``, ask, ``end``."""
 
     def __init__(self, pieces: Floats, cuts: Flags, cutters: Cutters, grid: Grid, depth: Floats) -> None:
-        """``cuts`` tells which pieces remove material; ``depth`` is the height of the material in each cell (-inf:
-        none).
-        """
+        """``cuts`` marks pieces that remove material; ``depth`` is the height of the material by cell (-inf: none)."""
         self._pieces, self._cuts, self._cutters, self.grid = pieces, cuts, cutters, grid
         self.depth = depth
         self._shape = _shapes(pieces)
@@ -183,9 +181,7 @@ class Clearing:
         return row, self._piece[index]
 
     def older_above(self, cell: Ints, height: Floats) -> Floats:
-        """The lowest height above a height at which an earlier block cleared a part of a cell; inf where there is
-        none.
-        """
+        """The next height above a height at which an earlier block cleared a part of a cell, or inf."""
         place = np.searchsorted(self._old, self._key(cell, height), "right")
         there = place < len(self._old)
         there[there] = self._old[place[there]] // TALL == cell[there]

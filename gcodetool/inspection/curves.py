@@ -179,12 +179,16 @@ def _from_arc(piece: Piece, point: Vector, line: int) -> Gap:
     slack = 0.01
     for lap in range(math.ceil(whole / (2.0 * math.pi)) + 1):
         angle = turned + lap * 2.0 * math.pi
-        angle = angle - 2.0 * math.pi if angle - 2.0 * math.pi > -slack and lap == 0 and angle > whole + slack else angle
+        angle = (
+            angle - 2.0 * math.pi if angle - 2.0 * math.pi > -slack and lap == 0 and angle > whole + slack else angle
+        )
         if angle > whole + slack:
             break
         share = min(max(angle / whole, 0.0), 1.0)
         spot = piece.point(share) if 0.0 < share < 1.0 else (piece.end if share else piece.start)
-        found = Gap(math.dist(spot, point), tuple(abs(a - b) for a, b in zip(spot, point, strict=True)), (piece.line, line))
+        found = Gap(
+            math.dist(spot, point), tuple(abs(a - b) for a, b in zip(spot, point, strict=True)), (piece.line, line)
+        )
         best = found if found.distance < best.distance else best
     return best
 
@@ -259,7 +263,9 @@ def _nearest(points: Floats, path: Floats) -> tuple[Floats, Floats, NDArray[np.i
     for low in range(0, len(points), STEP):
         chunk = points[low : low + STEP]
         # both paths are about as long: the same share of the journey is the place to look at, on circles run round twice too
-        first, last = np.searchsorted(along, travelled[[low, low + len(chunk) - 1]] * along[-1] / (travelled[-1] or 1.0))
+        first, last = np.searchsorted(
+            along, travelled[[low, low + len(chunk) - 1]] * along[-1] / (travelled[-1] or 1.0)
+        )
         lowest, highest = max(0, int(first) - WINDOW), min(len(path) - 1, int(last) + WINDOW)
         d, v, index = _to_segments(chunk, path[lowest : highest + 1])
         away[low : low + STEP], vector[low : low + STEP], at[low : low + STEP] = d, v, index + lowest

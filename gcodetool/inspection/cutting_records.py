@@ -1,5 +1,4 @@
-"""Records of the cut: the path, where the cutter meets material, labels, forces.  Nothing here computes more than a
-property.
+"""Records of the cut: the path, where the cutter meets material, labels, forces; no more than properties.
 
 Words of the trade used here:
 
@@ -161,8 +160,7 @@ class Samples:
 
 @dataclass(frozen=True, slots=True)
 class Slices:
-    """Engaged intervals: in each, a sample meets material from angle ``first`` to ``last`` between ``low`` and
-    ``high``.
+    """Engaged intervals: a sample meets material from angle ``first`` to ``last`` between ``low`` and ``high``.
 
     ``radius`` is that of the cutter there.  Sorted by sample.
     """

@@ -58,9 +58,7 @@ def durations(path: Path, machine: Machine) -> Durations:
 
 
 def _along(path: Path, machine: Machine, key: str) -> Floats:
-    """The largest feed or acceleration along each move that keeps every axis within its own; inf where none is
-    known.
-    """
+    """The largest feed or acceleration along each move that keeps every axis within its own, or inf."""
     step = np.abs(path.end - path.start)
     size = np.maximum(path.length, 1e-12)
     found = np.full(path.count, math.inf)

@@ -73,7 +73,7 @@ class _Group:
         self.moves, self.centre, self.radius, self.sense = moves, centre, radius, sense
 
 
-# ---- circles -----------------------------------------------------------------------------------------------------------
+# ---- circles --------------------------------------------------------------------------------------------------------
 
 
 def _circles(path: Path, feed: Flags) -> Iterator[_Group]:
@@ -178,7 +178,7 @@ def _arcs(path: Path, radius: Floats, moves: Ints, walls: _Walls) -> Iterator[Sh
             yield _shape(path, radius, "arc", [k], int(left) - int(right), centre, float(path.radius[k]))
 
 
-# ---- straight ones -------------------------------------------------------------------------------------------------------
+# ---- straight ones --------------------------------------------------------------------------------------------------
 
 
 def _straight(path: Path, radius: Floats, moves: Ints, walls: _Walls) -> Iterator[Shape]:

@@ -7,7 +7,7 @@ this table together.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -208,8 +208,8 @@ def of_travel(envelope: Sequence[AxisEnvelope], beyond: Sequence[float], reserve
         if over > 1e-9 and axis.travel is not None:
             code = 302 if axis.placed else 303
             span = f"{axis.low:.3f} to {axis.high:.3f}" if axis.placed else f"a span of {axis.high - axis.low:.3f} mm"
-            text = f"axis {axis.axis}: {span}, take-ups and settles included; travel {axis.travel[0]:g} to {axis.travel[1]:g}"
-            yield finding(code, 0, text)
+            limit = f"travel {axis.travel[0]:g} to {axis.travel[1]:g}"
+            yield finding(code, 0, f"axis {axis.axis}: {span}, take-ups and settles included; {limit}")
     open_ = [axis.axis for axis in envelope if axis.travel is not None and not axis.placed]
     if open_:
         yield finding(
@@ -223,35 +223,40 @@ def of_chip(
     path: Path, job: Job, labels: Labels, engagement: Engagement, cut: Cut, forces: Forces
 ) -> Iterator[Finding]:
     """4xx: chips too thin or too thick, deep slots."""
-    moves, feed = engagement.samples.move, ~path.rapid[engagement.samples.move]
-    material = job.material
+    moves, material = engagement.samples.move, job.material
+    cutting = ~path.rapid[moves] & (labels.by_sample != Label.AIR)
     if material is not None:
         largest = np.nan_to_num(forces.chip_load / forces.thinning, nan=np.inf)
-        thin = feed & (largest < material.least_chip) & (labels.by_sample > 0)
-        yield from _worst(401, path, moves, thin, -largest,
-                          lambda k: f"the chip is {1000 * largest[k]:.1f} um at its thickest, less than {1000 * material.least_chip:g} um")  # fmt: skip
-        if material.most_chip is not None:
-            thick = forces.chip_load > material.most_chip
-            yield from _worst(402, path, moves, feed & thick & (labels.by_sample > 0), forces.chip_load,
-                              lambda k: f"{forces.chip_load[k]:.4f} mm per tooth, more than {material.most_chip:g} mm")  # fmt: skip
-    wide = 2.0 * np.array([cutter.radius for cutter in job.cutters])[path.tool[moves]] if len(moves) else np.empty(0)
-    deep = feed & (labels.by_sample == Label.SLOT) & (cut.depth > DEEP_SLOT * wide)
-    yield from _worst(
-        403, path, moves, deep, cut.depth, lambda k: f"{cut.depth[k]:.3f} mm deep with a {wide[k]:g} mm cutter"
-    )
+        least, most = material.least_chip, material.most_chip or np.inf
+        thin = cutting & (largest < least)
+        words = f"um at its thickest, less than {1000 * least:g} um"
+        yield from _worst(401, path, moves, thin, -largest, lambda k: f"the chip is {1000 * largest[k]:.1f} {words}")
+        thick = cutting & (forces.chip_load > most)
+        load = forces.chip_load
+        yield from _worst(402, path, moves, thick, load, lambda k: f"{load[k]:.4f} mm per tooth, more than {most:g} mm")
+    wide = 2.0 * np.array([cutter.radius for cutter in job.cutters] or [0.0])[path.tool[moves]]
+    deep = cutting & (labels.by_sample == Label.SLOT) & (cut.depth > DEEP_SLOT * wide)
+    yield from _worst(403, path, moves, deep, cut.depth, lambda k: f"{cut.depth[k]:.3f} mm deep, cutter {wide[k]:g} mm")
 
 
-def _worst(code: int, path: Path, moves: Ints, mark: np.ndarray, size: Floats, text: object) -> Iterator[Finding]:  # type: ignore[type-arg]
+def _worst(
+    code: int, path: Path, moves: Ints, mark: Flags, size: Floats, words: Callable[[int], str]
+) -> Iterator[Finding]:
     """One finding at the worst of the marked samples, with the number of moves."""
     rows = np.flatnonzero(mark)
     if len(rows):
         k = int(rows[np.argmax(size[rows])])
         count = len(np.unique(moves[rows]))
-        yield finding(code, int(path.line[moves[k]]), f"{text(k)} (worst of {count} moves)", count=count)  # type: ignore[operator]
+        yield finding(code, int(path.line[moves[k]]), f"{words(k)} (worst of {count} moves)", count=count)
 
 
 def of_holding(
-    path: Path, machine: Machine, labels: Labels, moves: Ints, holdings: Sequence[Holding], advice: object
+    path: Path,
+    machine: Machine,
+    labels: Labels,
+    moves: Ints,
+    holdings: Sequence[Holding],
+    advice: Callable[[Label, float], str],
 ) -> Iterator[Finding]:
     """5xx: axes that the cut drags, or nearly; one finding for each axis, verdict and label, at its worst place."""
     for holding in holdings:
@@ -268,7 +273,7 @@ def of_holding(
                 text = f"axis {holding.axis}, {label.word}: the mean force reaches {share} (worst of {count} moves)"
                 if verdict == Hold.DRAGGED:
                     text += f"; a compensated move is then wrong by up to {lash} mm"
-                action = advice(label, float(holding.ratio[k])) if verdict == Hold.DRAGGED else ""  # type: ignore[operator]
+                action = advice(label, float(holding.ratio[k])) if verdict == Hold.DRAGGED else ""
                 yield finding(code, int(path.line[moves[k]]), text, action, count)
 
 

@@ -146,7 +146,7 @@ def _peak(material: Material, average: Floats, load: Floats, thick: Floats, dept
     return found
 
 
-# ---- the axes ---------------------------------------------------------------------------------------------------------
+# ---- the axes -------------------------------------------------------------------------------------------------------
 
 
 def hold(axis: Axis, force: Floats, way: Floats, cutting: Flags) -> Holding:

@@ -1,7 +1,6 @@
-"""The job sheet: stock, tools, clamps and material of one job, read from TOML or from options.  Loads neither numpy
-nor shapely.
+"""The job sheet: stock, tools, clamps and material of one job, read from TOML or from options.
 
-Lengths are mm, speeds rpm, feeds mm/min, positions in program coordinates, whatever units the program uses.
+It loads neither numpy nor shapely.  Lengths are mm, speeds rpm, feeds mm/min, positions in program coordinates, whatever units the program uses.
 """
 
 from __future__ import annotations
@@ -168,9 +167,7 @@ def _one_of(value: Any, known: Sequence[str], key: str) -> str:
 
 
 def cutter_from_option(text: str) -> Cutter:
-    """A tool from ``1=3.175`` or ``1=6,ball,flutes=1,hand=left``; ``*=3`` is for every other tool.  Raises
-    SheetError.
-    """
+    """A tool from ``1=3.175`` or ``1=6,ball,flutes=1,hand=left``; ``*=3`` is every other one.  Raises SheetError."""
     number, _, rest = text.partition("=")
     words = [word.strip() for word in rest.split(",")]
     values: dict[str, Any] = {}
@@ -198,7 +195,7 @@ def _parsed(text: str) -> float:
         raise _Wrong(f"{text} is no number; lengths are bare numbers in mm") from None
 
 
-# ---- stock, clamps, material -------------------------------------------------------------------------------------------
+# ---- stock, clamps, material ----------------------------------------------------------------------------------------
 
 
 def _stock(table: Mapping[str, Any], faults: list[str]) -> StockShape:

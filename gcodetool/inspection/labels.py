@@ -1,5 +1,4 @@
-"""Climb, conventional, slot or air: from the engaged angles to labels, kinds of motion and places where a contour
-flips.
+"""Climb, conventional, slot or air: labels from the engaged angles, and where a contour flips.
 
 With a right-hand cutter (M3) the part of the engagement left of the feed direction is cut conventional: there the
 chip begins with no thickness.  The part right of it is cut climb: there it ends with none (Altintas, Manufacturing
@@ -127,8 +126,7 @@ def _upright(path: Path) -> Flags:
 
 
 def flips(path: Path, cutters: Cutters, samples: Samples, by_sample: Ints) -> list[tuple[int, int, Label, Label]]:
-    """Where a contour changes between climb and conventional: (last move before, first move after, label before,
-    after).
+    """Where a contour changes between climb and conventional: moves and labels before and after.
 
     Slots and air between the two do not count unless they are longer than the cutter is wide; stretches of one label
     that are shorter than half the cutter's radius are passed over.

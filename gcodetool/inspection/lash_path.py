@@ -21,9 +21,7 @@ PAIRS = {1: (0, 1), 2: (2, 0), 3: (1, 2)}
 
 @dataclass(frozen=True, slots=True)
 class AxisCase:
-    """One axis in one case: its true ``lash``, the lash it is ``compensated`` for (None: not at all), its datum
-    side.
-    """
+    """One axis in one case: true ``lash``, the lash it is ``compensated`` for (None: not at all), datum side."""
 
     lash: float
     compensated: float | None

@@ -1,6 +1,4 @@
-"""Limits and sense: travel, keep-out areas, feeds, speeds, a cutter that was never started, rapids that meet
-material.
-"""
+"""Limits: travel, keep-out areas, feeds, spindle speeds, the bottom of the stock, rapids that meet material."""
 
 from __future__ import annotations
 
@@ -90,9 +88,7 @@ def below_stock(path: Path, stock: StockTaken) -> list[Hit]:
 
 
 def keep_out_hits(path: Path, cutters: Sequence[Cutter], keep_outs: Sequence[KeepOut]) -> list[Hit]:
-    """Moves, rapids too, on which the cutter enters a keep-out area below its top; each area once, with its first
-    move.
-    """
+    """The first move, rapid or feed, on which the cutter enters each keep-out area below its top."""
     if not keep_outs or not path.count:
         return []
     radius = np.array([cutter.radius for cutter in cutters])[path.tool]

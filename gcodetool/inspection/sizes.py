@@ -39,9 +39,7 @@ class Case:
 
 
 def cases(machine: Machine) -> list[Case]:
-    """Uncompensated; compensated; compensated and held everywhere; compensated with the lash at both ends of its
-    uncertainty.
-    """
+    """Uncompensated; compensated; compensated and held everywhere; the same with the largest and least lash."""
 
     def both(make: Callable[[Axis], AxisCase]) -> Variant:
         return {letter: make(machine.axis(letter)) for letter in PLAN}
@@ -145,7 +143,7 @@ def _stretch(shape: Shape, path: Path) -> tuple[Ints, Floats]:
     return np.concatenate(moves), np.concatenate(shares)
 
 
-# ---- round ones --------------------------------------------------------------------------------------------------------
+# ---- round ones -----------------------------------------------------------------------------------------------------
 
 
 def _round(shape: Shape, predictor: Predictor) -> Feature:
@@ -225,7 +223,7 @@ def _arc(shape: Shape, predictor: Predictor) -> Feature:
     return Feature("arc", name, shape.lines, shape.centre, shape.depth, tuple(rows), drag_words(dragged))
 
 
-# ---- straight ones -------------------------------------------------------------------------------------------------------
+# ---- straight ones --------------------------------------------------------------------------------------------------
 
 
 def _wall(shape: Shape, predictor: Predictor) -> tuple[Feature, list[float], bool]:

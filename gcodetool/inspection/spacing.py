@@ -84,9 +84,7 @@ def _width(one: Wall, other: Wall, meant: float) -> Feature:
 
 
 def hole_pairs(holes: Sequence[Shape], places: Sequence[tuple[Floats, list[Floats]]]) -> Iterator[Feature]:
-    """Spacings of each hole and its nearest neighbours; ``places`` are wanted and actual places, one entry for each
-    hole.
-    """
+    """Spacings of each hole and its nearest neighbours; ``places`` are their wanted and actual places."""
     wanted = np.array([want for want, _ in places]).reshape(-1, 2)
     done: set[tuple[int, int]] = set()
     for k in range(len(holes)):

@@ -196,8 +196,8 @@ class _Cone:
         along, across = pu * self.tu + pv * self.tv, np.abs(pv * self.tu - pu * self.tv)
         best = along + across * self.opening / np.maximum(self.closing, 1e-12)
         share = np.clip(best / np.maximum(self.length, 1e-12), 0.0, 1.0)
-        distance = np.hypot(along - share * self.length, across)
-        return distance <= self.ra + (self.rb - self.ra) * share
+        found: Flags = np.hypot(along - share * self.length, across) <= self.ra + (self.rb - self.ra) * share
+        return found
 
 
 def _meet_circle(radius: Floats, u: Floats, v: Floats, other: Floats) -> list[Floats]:

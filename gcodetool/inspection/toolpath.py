@@ -76,7 +76,8 @@ def _tool(move: Move, cutters: Sequence[Cutter], seen: dict[str, int]) -> int:
         name = f"tool T{word}" if move.context.tool else "the tool, to which the program gives no T word"
         key = word if move.context.tool else "*"
         raise SheetError(
-            f"line {move.line}: nothing is known of {name}: state its diameter in mm, as --tool {key}=3.175, or in the job sheet"
+            f"line {move.line}: nothing is known of {name}: state its diameter in mm, as --tool {key}=3.175, "
+            "or in the job sheet"
         )
     seen[word] = found
     return max(found, 0)

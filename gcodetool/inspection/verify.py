@@ -9,13 +9,13 @@ program; two different sets of arbitrary values stand for them.
 from __future__ import annotations
 
 import itertools
-import random
 import re
 from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from typing import NamedTuple
 
 from gcodetool.inspection.curves import Gap, gap, is_still, nearest, stray
+from gcodetool.inspection.machines import some_setup
 from gcodetool.lash.path import Follower, Piece, Vector, intended
 from gcodetool.lash.play import shift
 from gcodetool.lash.running import Settings
@@ -122,36 +122,6 @@ def _first_offset(original: Blocks) -> str:
         if found:
             return found[0]
     return OFFSET_WORDS[0]
-
-
-def some_setup(
-    seed: int, machine: Machine, stated: Settings, first_offset: str = "G54", skip_deletable: bool = False
-) -> Setup:
-    """Arbitrary values for what neither program nor operator says; the second set has a changer that moves the machine."""
-    rng = random.Random(seed)
-    sign = 1 if seed % 2 else -1
-
-    def place(span: int) -> dict[str, int]:
-        return {letter: sign * rng.randrange(1, span * 10_000) * (QUANTA_PER_MM // 10_000) for letter in ORDER}
-
-    start = place(50)
-    offsets = {word: place(200) | dict(stated.offsets.get(word, {})) for word in OFFSET_WORDS}
-    lengths = {h: rng.randrange(1, 900_000) * (QUANTA_PER_MM // 10_000) for h in range(200)} | dict(stated.lengths)
-    for letter, said in stated.start.items():
-        if said.position is not None:
-            start[letter] = offsets[first_offset].get(letter, 0) + decimal_to_quanta(said.position)
-    if stated.start:
-        # a controller that has just been set up has the frame in force in which the start was read
-        offsets["G54"] = offsets[first_offset]
-    return Setup(
-        start=start,
-        offsets=offsets,
-        lengths=lengths,
-        homes={"G28": place(300), "G30": place(300)},
-        tool_change=place(100) if sign < 0 else None,
-        units=machine.units,
-        skip_deletable=skip_deletable,
-    )
 
 
 # ---- running a program -----------------------------------------------------------------------------------------------
@@ -267,7 +237,9 @@ class _Fleet:
         datum = {letter: axis.datum for letter, axis in machine.axes.items()}
         lashed = [letter for letter in lash if lash[letter] > 0]
         self._at: Sequence[int] = [setup.start.get(letter, 0) for letter in ORDER]
-        self._sides = [dict(zip(lashed, sides, strict=True)) for sides in itertools.product((-1, 1), repeat=len(lashed))]
+        self._sides = [
+            dict(zip(lashed, sides, strict=True)) for sides in itertools.product((-1, 1), repeat=len(lashed))
+        ]
         known = {letter: said.side for letter, said in stated.start.items() if said.side}
         self._corners = [_Corner(Follower(lash, datum, self._at, sides, known), _Sink(), 0) for sides in self._sides]
 
@@ -297,7 +269,9 @@ class _Fleet:
         base = self._corners[0]
         alive = [corner.follower.sides for corner in self._corners]
         self._corners += [
-            _Corner(base.follower.copy(sides), base.sink.copy(), base.done) for sides in self._sides if sides not in alive
+            _Corner(base.follower.copy(sides), base.sink.copy(), base.done)
+            for sides in self._sides
+            if sides not in alive
         ]
         for corner in self._corners:
             corner.follower.lose(event.at, event.letters, kept=event.what == "tool change")

@@ -10,6 +10,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 
+from gcodetool.lash import holes
 from gcodetool.lash.knowledge import AxisKnowledge
 from gcodetool.lash.running import Running
 from gcodetool.lash.straight import arrival_side, settling_side
@@ -88,6 +89,8 @@ def _approach(run: Running, command: Command, asked: Cycle) -> tuple[list[str], 
             continue
         side = _hole_side(run, command, asked, axis)
         sides[letter] = side or settling_side(axis)
+        if letter in asked.steps and holes.wants_approach(run, axis, side) and not asked.aside:
+            side, sides[letter] = 0, axis.datum
         if not side:
             settle[letter] = asked.steps[letter]
     if settle:
@@ -119,11 +122,11 @@ def _settle(run: Running, command: Command, asked: Cycle, settle: Mapping[str, i
     for name, target in settle.items():
         axis, side = run.axes[name], sides[name]
         axis.land(target, side, True)
-        beyond = -side * (axis.lash(run.is_inch(axis, command.after)) + axis.margin)
+        beyond = holes.overshoot(run, axis, run.is_inch(axis, command.after)) * -side
         like = command.number(name).strip()
         words.append((name, run.number_at(axis, command.after, side, like, beyond)))
         back.append((name, run.number_at(axis, command.after, side, like)))
-        run.tally.path_added += 2 * (axis.mm_lash + axis.margin) / QUANTA_PER_MM
+        run.tally.path_added += 2 * abs(beyond) / QUANTA_PER_MM
     run.tally.settles += len(settle)
     look = run.look(command)
     return [new_line([("G", "0"), *words], look), new_line([("G", "0"), *back], look)]

@@ -7,7 +7,7 @@ the rapid are held back, at most ``look_ahead`` of them, and only while some axi
 
 from __future__ import annotations
 
-from collections.abc import Callable, Collection
+from collections.abc import Callable, Collection, Sequence
 from typing import NamedTuple
 
 from gcodetool.motion.modal import ModalState
@@ -38,6 +38,7 @@ class Outflow:
         self._held: list[str] = []
         self._open_axes: set[str] = set()
         self._words: list[Word] = []
+        self._lines: list[str] = []
         self.slot: Slot | None = None
 
     def put(self, text: str, touched: Collection[str] = ()) -> None:
@@ -66,11 +67,19 @@ class Outflow:
         self._words.append(word)
         self._open_axes.discard(word[0])
 
+    def take_lines(self, texts: Sequence[str], axes: Collection[str]) -> None:
+        """Put whole lines into the slot; it takes nothing more for these axes."""
+        self._lines += texts
+        self._open_axes.difference_update(axes)
+
     def close(self) -> None:
-        """Write the take-up of the slot, if any, and all that was held behind it."""
+        """Write the lines and the take-up of the slot, if any, and all that was held behind it."""
         slot, self.slot = self.slot, None
         if slot is None:
             return
+        for text in self._lines:
+            self.write(text + slot.ending)
+        self._lines.clear()
         if self._words:
             self.write(new_line([("G", "0"), *self._words], slot.look) + slot.ending)
             self._words.clear()

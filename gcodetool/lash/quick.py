@@ -54,6 +54,7 @@ class Quick:
         run, plans, split, join = self._run, self._plans, WORD.split, "".join
         out, take = run.out, self._take
         ready = self._begin()
+        block = None
         for block in blocks:
             if ready:
                 pieces = split(block.text)
@@ -72,10 +73,14 @@ class Quick:
             self._ordinary(block)
             ready = self._begin()
         self._end()
+        if block is not None:
+            run.tally.blocks = block.number
 
     def _begin(self) -> bool:
         """Take over what is known; True where the modes and all that is known allow the short way."""
         run, state = self._run, self._run.state
+        if run.settings.hole_overshoot:
+            return False
         modes = state.distance == "G90" and state.units is not None and state.feed_mode == "G94"
         if not modes or run.maybe_adrift or state.motion not in ("G0", "G1", "G2", "G3") or not self._is_open():
             return False

@@ -6,6 +6,7 @@ from collections.abc import Callable, Collection, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from decimal import Decimal
 
+from gcodetool.lash.cost import stop_to_stop
 from gcodetool.lash.knowledge import AxisKnowledge, Start, knowledge
 from gcodetool.lash.outflow import Outflow, Slot
 from gcodetool.lash.tally import TakeUp, Tally
@@ -41,7 +42,9 @@ MM_PER_INCH = Decimal("25.4")
 class Settings:
     """How to rewrite, beside the machine: what holds at the start, how far to look ahead, how to take deletable blocks.
 
-    ``offsets`` and ``lengths`` are what the operator states of work offsets and tool lengths, quanta.  ``block_delete`` is None where the switch is not known, True where deletable blocks are skipped, False where they run.
+    ``offsets`` and ``lengths`` are what the operator states of work offsets and tool lengths, quanta.
+    ``hole_overshoot`` is how far past a hole to go so as to reach it from the datum side, quanta, 0 for not at all.
+    ``block_delete`` is None where the switch is not known, True where deletable blocks are skipped, False where they run.
     """
 
     start: Mapping[str, Start] = field(default_factory=dict)
@@ -49,6 +52,7 @@ class Settings:
     lengths: Mapping[int, int] = field(default_factory=dict)
     look_ahead: int = 32
     block_delete: bool | None = None
+    hole_overshoot: int = 0
 
 
 class Running:
@@ -216,11 +220,20 @@ class Running:
 
     def _count(self, command: Command, axes: Sequence[AxisKnowledge], in_cut: bool, feed: str | None) -> None:
         crossed = max(axis.mm_lash for axis in axes) / QUANTA_PER_MM
-        per_minute = _feed_mm(feed, command.after) if in_cut else 0.0
-        seconds = 60.0 * crossed / per_minute if per_minute else 0.0
-        letters = "".join(axis.letter for axis in axes)
-        length = sum(a.mm_lash for a in axes if not a.rotary) / QUANTA_PER_MM
+        per_minute = _feed_mm(feed, command.after) if in_cut else self._rapid_feed(axes)
+        seconds = stop_to_stop(crossed, per_minute / 60.0, self._acceleration(axes)) if per_minute else 0.0
+        letters = "".join([axis.letter for axis in axes])
+        length = sum([a.mm_lash for a in axes if not a.rotary]) / QUANTA_PER_MM
         self.tally.take_up(TakeUp(seconds, command.block.number, letters, in_cut), length)
+
+    def _acceleration(self, axes: Sequence[AxisKnowledge]) -> float:
+        """The smallest acceleration that the sheet gives for these axes, 0 where it gives none."""
+        stated = [self.machine.axis(axis.letter).acceleration for axis in axes]
+        return min((float(value) for value in stated if value), default=0.0)
+
+    def _rapid_feed(self, axes: Sequence[AxisKnowledge]) -> float:
+        stated = [self.machine.axis(axis.letter).max_feed for axis in axes]
+        return min((float(value) for value in stated if value), default=0.0)
 
     # ---- feed words -----------------------------------------------------------------------------------------------
 

@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 
+from gcodetool.lash import holes
 from gcodetool.lash.knowledge import AxisKnowledge
 from gcodetool.lash.running import Running
 from gcodetool.motion.command import Command, Kind
@@ -159,6 +160,8 @@ def feed(run: Running, command: Command) -> None:
     if unknown:
         _feed_from_unknown(run, command, goal, unknown)
         return
+    if run.settings.hole_overshoot and _plunges(command, run, goal):
+        holes.approach(run)
     texts = run.reseat(command)
     sides = {letter: run.axes[letter].side_for(goal[letter]) for letter in goal if not run.axes[letter].idle}
     turning = {letter: side for letter, side in sides.items() if side != run.axes[letter].side}
@@ -167,6 +170,13 @@ def feed(run: Running, command: Command) -> None:
     pieces = _shift_words(run, command, sides) if sides else list(command.pieces)
     _arrive(run, command, goal, sides)
     finish_feed(run, command, texts, pieces)
+
+
+def _plunges(command: Command, run: Running, goal: Mapping[str, int]) -> bool:
+    """True for a feed that moves Z alone, and down."""
+    if "Z" not in goal or goal["Z"] >= run.axes["Z"].position:
+        return False
+    return all(letter == "Z" or _stands(command, run.axes[letter], goal[letter]) for letter in goal)
 
 
 def finish_feed(run: Running, command: Command, texts: list[str], pieces: list[str]) -> None:

@@ -21,7 +21,10 @@ class TakeUp(NamedTuple):
 
 @dataclass(slots=True)
 class Tally:
-    """Running totals of one rewriting; lengths in mm (degrees of rotary axes are not added)."""
+    """Running totals of one rewriting; lengths in mm (degrees of rotary axes are not added), ``seconds`` of take-ups.
+
+    ``stops`` keeps every take-up in the cut where ``keep_stops`` asks for it; otherwise only the worst few are kept.
+    """
 
     blocks: int = 0
     changed: int = 0
@@ -30,19 +33,27 @@ class Tally:
     blocks_in_air: int = 0
     settles: int = 0
     splits: int = 0
+    approaches: int = 0
+    seconds: float = 0.0
     path_added: float = 0.0
     worst: list[TakeUp] = field(default_factory=list)
+    keep_stops: bool = False
+    stops: list[TakeUp] = field(default_factory=list)
     cautions: dict[str, int] = field(default_factory=dict)
 
     def take_up(self, made: TakeUp, length: float) -> None:
         """Count one take-up block and keep it if it is among the worst: those that stand longest in the cut."""
         self.take_ups.update(made.axes)
         self.path_added += length
+        self.seconds += made.seconds
         if made.in_cut:
             self.blocks_in_cut += 1
-            heapq.heappush(self.worst, made)
-            if len(self.worst) > _WORST:
-                heapq.heappop(self.worst)
+            if self.keep_stops:
+                self.stops.append(made)
+            if len(self.worst) < _WORST:
+                heapq.heappush(self.worst, made)
+            elif made > self.worst[0]:
+                heapq.heapreplace(self.worst, made)
         else:
             self.blocks_in_air += 1
 

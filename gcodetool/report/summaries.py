@@ -40,6 +40,11 @@ def compensation_lines(tally: Tally, machine: Machine, verdict: Verdict | None) 
         worst = sorted(tally.worst, key=lambda made: (-made.seconds, made.line))
         places = ", ".join(f"line {m.line} ({m.axes}{_seconds(m.seconds)})" for m in worst)
         lines.append(f"longest stops in the cut: {places}")
+    lines += [f"stops in the cut: line {made.line}: {made.axes}{_seconds(made.seconds)}" for made in tally.stops]
+    if tally.seconds:
+        lines.append(f"time added: about {tally.seconds:.1f} s, take-ups from stop to stop at the feeds and accelerations known")
+    if tally.approaches:
+        lines.append(f"holes reached anew from the datum side: {tally.approaches} axis moves")
     lines.append(
         f"settled: {tally.settles} axes; arcs split: {tally.splits} times; "
         f"blocks changed: {tally.changed} of {tally.blocks}; path added: {tally.path_added:.2f} mm"

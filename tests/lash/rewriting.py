@@ -5,7 +5,9 @@ Lash, datum and the other options are written as on the command line: ``{"x": "0
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -15,11 +17,12 @@ from gcodetool.lash.compensate import MARK, Compensator
 from gcodetool.lash.running import Settings
 from gcodetool.lash.tally import Tally
 from gcodetool.machine import Machine, machine_from_options
+from gcodetool.motion.frames import OFFSET_WORDS
 from gcodetool.program.blocks import blocks_of
 from tests.oracle.compare import TOLERANCE, Report, deviation
 from tests.oracle.machine import AXES
 from tests.oracle.machine import Machine as Simulated
-from tests.oracle.machines import worst_of
+from tests.oracle.machines import random_machine, random_sides, worst_of
 
 Text = str | bytes
 STATED = ("start", "offset", "length", "block_delete", "look_ahead")
@@ -70,31 +73,46 @@ def judged(
     datum: Mapping[str, str] | None = None,
     units: str = "mm",
     start: Sequence[str] = (),
+    offset: Sequence[str] = (),
+    length: Sequence[str] = (),
     seeds: range = range(4),
     **options: Any,
 ) -> Report:
-    """The oracle's worst report on a result; ``start`` holds what was stated, such as ``x=0-``."""
+    """The oracle's worst report on a result.
+
+    ``start``, ``offset`` and ``length`` hold what was stated, such as ``x=0-``; a start is meant in G54.
+    """
     sizes = {axis: float(value) for axis, value in lash.items()}
     one, two = as_bytes(original), as_bytes(result)
-    if not start:
+    if not (start or offset or length):
         return worst_of(one, two, sizes, datum=datum, inch=units == "in", seeds=seeds, **options)
     report = Report()
     for seed in seeds:
         rng = np.random.default_rng(seed)
-        place, sides, known = [0.0] * 6, rng.integers(0, 2, 6).astype(float).tolist(), ""
-        for axis, position, side in map(_start, start):
-            place[axis], known = position, known + (AXES[axis] if side else "")
-            sides[axis] = {"+": 1.0, "-": 0.0}.get(side, sides[axis])
-        simulated = Simulated(start=tuple(place), inch=units == "in")
-        found = deviation(one, two, sizes, simulated, datum=datum, sides=sides, known=known, **options)
+        simulated, sides, known = _simulated(rng, units, start, offset, length)
+        found = deviation(one, two, sizes, simulated, datum=datum, sides=sides, known=known, disturb=seed, **options)
         report = report.merge(found)
     return report
 
 
-def _start(text: str) -> tuple[int, float, str]:
-    letter, _, value = text.partition("=")
-    side = value[-1] if value[-1:] in ("+", "-") else ""
-    return AXES.index(letter.upper()), float(value.rstrip("+-") or 0), side
+def _simulated(
+    rng: np.random.Generator, units: str, start: Sequence[str], offset: Sequence[str], length: Sequence[str]
+) -> tuple[Simulated, list[float], str]:
+    """A random machine that keeps to what was stated, its start sides, and the axes whose side was stated."""
+    machine = random_machine(rng, inch=units == "in")
+    work = [list(system) for system in machine.work]
+    for text in offset:
+        word, axis, value = re.fullmatch(r"(G[\d.]+):(\w)=(.+)", text, re.IGNORECASE).groups()  # type: ignore[union-attr]
+        work[OFFSET_WORDS.index(word.upper())][AXES.index(axis.upper())] = float(value)
+    lengths = machine.lengths | {int(h): float(value) for h, _, value in (text.partition("=") for text in length)}
+    place, sides, known = list(machine.start), list(random_sides(rng)), ""
+    for text in start:
+        axis, position, side = re.fullmatch(r"(\w)=([-+]?[\d.]*)([-+]?)", text).groups()  # type: ignore[union-attr]
+        k = AXES.index(axis.upper())
+        place[k] = work[0][k] + float(position) if position else place[k]
+        if side:
+            sides[k], known = float(side == "+"), known + AXES[k]
+    return replace(machine, start=tuple(place), work=tuple(map(tuple, work)), lengths=lengths), sides, known
 
 
 def assert_right(original: Text, result: Text, lash: Mapping[str, str], **options: Any) -> Report:
