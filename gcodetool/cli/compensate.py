@@ -36,9 +36,9 @@ from gcodetool.cli.streams import ENCODING, Draft, OutputRefused, Source, draft,
 from gcodetool.cli.terminal import say, watched
 from gcodetool.errors import ProofError, SheetError
 from gcodetool.lash.compensate import MARK, Compensator
+from gcodetool.lash.reversals import statistics
 from gcodetool.lash.running import Settings
 from gcodetool.lash.tally import Tally
-from gcodetool.lash.reversals import statistics
 from gcodetool.machine import Machine
 from gcodetool.motion.moves import ORDER, Setup
 from gcodetool.program.blocks import blocks
@@ -63,18 +63,25 @@ def command(
     block_delete: BlockDeleteOption = None,
     look_ahead: LookAheadOption = 32,
     hole_overshoot: HoleOvershootOption = None,
-    stops: Annotated[bool, typer.Option("--stops", help="List every take-up that stops the tool inside the cut.")] = False,
+    stops: Annotated[
+        bool, typer.Option("--stops", help="List every take-up that stops the tool inside the cut.")
+    ] = False,
     live: Annotated[
         bool, typer.Option("--live", help="Send each line as soon as it can be, without the proof; for a live link.")
     ] = False,
-    again: Annotated[bool, typer.Option("--again", help="Rewrite a program that gcodetool has rewritten before.")] = False,
-    quiet: Annotated[bool, typer.Option("--quiet", "-q", help="Say nothing on standard error unless something is wrong.")] = False,
+    again: Annotated[
+        bool, typer.Option("--again", help="Rewrite a program that gcodetool has rewritten before.")
+    ] = False,
+    quiet: Annotated[
+        bool, typer.Option("--quiet", "-q", help="Say nothing on standard error unless something is wrong.")
+    ] = False,
     name: NameOption = None,
     force: ForceOption = False,
 ) -> None:
     """Rewrite a program so that a controller without lash compensation cuts the intended part.
 
-    The whole program is read, rewritten and proved before any of the result appears.  The summary goes to standard error.
+    The whole program is read, rewritten and proved before any of the result appears.  The summary goes to standard
+    error.
     """
     sheet = machine_from(
         machine, lash=lash, datum=datum, ripple=ripple, units=units, take_up_feed=take_up_feed,
@@ -82,7 +89,7 @@ def command(
     )  # fmt: skip
     settings = settings_from(start, offset, length, block_delete, look_ahead, hole_overshoot)
     _check_overshoot(settings, sheet)
-    tell = (lambda lines: None) if quiet else (lambda lines: say("\n".join(lines)))
+    tell = _hush if quiet else _say_lines
     if live:
         if output != "-":
             raise OutputRefused("a live program goes to standard output; leave -o out")
@@ -92,6 +99,14 @@ def command(
         return
     with draft(output, force=force, inputs=[program]) as result, open_source(program, name) as source:
         _whole(source, result, sheet, settings, again, stops, tell)
+
+
+def _say_lines(lines: list[str]) -> None:
+    say("\n".join(lines))
+
+
+def _hush(_: list[str]) -> None:
+    """Say nothing."""
 
 
 def _check_overshoot(settings: Settings, machine: Machine) -> None:
@@ -109,7 +124,13 @@ def header(machine: Machine) -> str:
 
 
 def _whole(
-    source: Source, result: Draft, machine: Machine, settings: Settings, again: bool, stops: bool, tell: Callable[[list[str]], None]
+    source: Source,
+    result: Draft,
+    machine: Machine,
+    settings: Settings,
+    again: bool,
+    stops: bool,
+    tell: Callable[[list[str]], None],
 ) -> None:
     from gcodetool.inspection.verify import verify
 
@@ -126,7 +147,10 @@ def _whole(
     tally = rewriting.rewrite(blocks(watched(source.lines(), source.size, "rewriting")))
     result.write("".join(held).encode(ENCODING))
     verdict = verify(
-        lambda: blocks(watched(source.lines(), source.size, "proving")), lambda: blocks(result.lines()), machine, settings
+        lambda: blocks(watched(source.lines(), source.size, "proving")),
+        lambda: blocks(result.lines()),
+        machine,
+        settings,
     )
     if not verdict.holds:
         found = "\n".join(proof_lines(verdict))
@@ -150,7 +174,9 @@ def _prove_holes(source: Source, result: Draft, machine: Machine, settings: Sett
     if found.distance > TOLERANCE_MM:
         line = f"line {found.lines[0]} is off by {found.distance:.4f} mm for a lash between 0 and {reach:g} mm"
         raise ProofError(f"the hole at {line}, so the result is not let out")
-    return f"holes: {found.count} places, off by at most {found.distance:.4f} mm for any true lash from 0 to {reach:g} mm"
+    return (
+        f"holes: {found.count} places, off by at most {found.distance:.4f} mm for any true lash from 0 to {reach:g} mm"
+    )
 
 
 def _passed_over(source: Source, machine: Machine) -> str:

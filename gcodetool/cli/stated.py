@@ -29,7 +29,8 @@ OffsetOption = Annotated[
     typer.Option("--offset", metavar="G54:AXIS=MM", help="Value of a work offset, as G54:x=120.5; repeatable."),
 ]
 LengthOption = Annotated[
-    list[str] | None, typer.Option("--length", metavar="H=MM", help="Length of a tool by H number, as 1=42.3; repeatable.")
+    list[str] | None,
+    typer.Option("--length", metavar="H=MM", help="Length of a tool by H number, as 1=42.3; repeatable."),
 ]
 BlockDeleteOption = Annotated[
     str | None,
@@ -39,14 +40,16 @@ BlockDeleteOption = Annotated[
 ]
 LookAheadOption = Annotated[
     int,
-    typer.Option("--look-ahead", metavar="N", min=0, max=10_000, help="Blocks held back at most to make a take-up in air."),
+    typer.Option(
+        "--look-ahead", metavar="N", min=0, max=10_000, help="Blocks held back at most to make a take-up in air."
+    ),
 ]
 HoleOvershootOption = Annotated[
     str | None,
     typer.Option(
         "--hole-overshoot",
         metavar="MM",
-        help="Reach every hole from the datum side, going this far past it first, so that its place does not hang on the lash.",
+        help="Reach every hole from the datum side, so that its place does not hang on the lash.",
     ),
 ]
 

@@ -73,7 +73,12 @@ def command(
 def _plain(verdict: Any) -> dict[str, Any]:
     def gap(found: Any) -> dict[str, Any]:
         by_axis = dict(zip("XYZABC", found.by_axis, strict=True))
-        return {"distance": found.distance, "by_axis": by_axis, "original_line": found.lines[0], "result_line": found.lines[1]}
+        return {
+            "distance": found.distance,
+            "by_axis": by_axis,
+            "original_line": found.lines[0],
+            "result_line": found.lines[1],
+        }
 
     return {
         "holds": verdict.holds,

@@ -29,6 +29,7 @@ from gcodetool.inspection.job_records import Job
 from gcodetool.inspection.stock import take_stock
 from gcodetool.inspection.toolpath import read_path
 from gcodetool.machine import Machine
+from gcodetool.motion.moves import Setup
 from gcodetool.program.blocks import blocks_of
 
 CAUTIONS = (
@@ -38,21 +39,21 @@ CAUTIONS = (
 )
 
 
-def labels_by_line(program: bytes, job: Job, units: str | None = None) -> dict[int, str]:
+def labels_by_line(program: bytes, job: Job, setup: Setup) -> dict[int, str]:
     """The label of each program line with feed motion: climb, conventional, slot, air, plunge or drill.
 
-    ``units`` is "mm" or "in" for a program that states none.  Raises Refusal and SheetError.
+    ``setup`` says what the program does not (units, offsets, lengths).  Raises Refusal and SheetError.
     """
-    path = read_path(blocks_of(program), job, units)
+    path = read_path(blocks_of(program), job, setup)
     _, _, marks, _, _ = _label(path, job)
     return labels.words_by_line(path, marks)
 
 
 def audit(
-    program: bytes, job: Job, machine: Machine, *, name: str = "", units: str | None = None, every_move: bool = False
+    program: bytes, job: Job, machine: Machine, setup: Setup, *, name: str = "", every_move: bool = False
 ) -> Audit:
     """Audit a program.  ``every_move`` asks for a row for each feed motion.  Raises Refusal and SheetError."""
-    path = read_path(blocks_of(program), job, units or machine.units)
+    path = read_path(blocks_of(program), job, setup)
     stock, engagement, marks, cut, remains = _label(path, job)
     samples = engagement.samples
     power = force.forces(path, Cutters.of(job.cutters), samples, engagement.slices, cut, job.material)
@@ -60,7 +61,7 @@ def audit(
     shapes = features.shapes(path, job.cutters, marks, remains.stands)
     sized = sizes.predict(shapes, sizes.Predictor(path, machine, samples, holdings)) if path.count else []
     times = durations(path, machine)
-    envelope = tuple(limits.envelope(path, machine, job))
+    envelope = tuple(limits.envelope(path, machine))
     found = [
         *findings.of_assumptions(path, job, machine, stock, power, cut, samples.move),
         *findings.of_sense(path, job, marks, cut, samples.move),
@@ -106,7 +107,7 @@ def _limit_findings(
     hits = limits.rapids_in_material(path, marks, engagement, cut.area)
     words = [f"a rapid meets material: {hit.value:.2f} mm2 of the cutter's face" for hit in hits]
     yield from findings.places(301, [line(hit.move) for hit in hits], words)
-    envelope = limits.envelope(path, machine, job)
+    envelope = limits.envelope(path, machine)
     low = next((limits.reserve_below(axis) for axis in envelope if axis.axis == "Z"), None)
     yield from findings.of_travel(envelope, [limits.beyond(axis) for axis in envelope], low)
     for hit in limits.keep_out_hits(path, job.cutters, job.keep_outs):
@@ -209,22 +210,28 @@ def _mean(values: Floats, weight: Floats) -> float:
     return float((np.where(weight > 0.0, values, 0.0) * weight).sum() / whole) if whole > 0.0 else float("nan")
 
 
+FORCE = """\
+Forces are estimates of the mean over a turn for {name} ({source}): expect {low:g} to {high:g} times the figures.
+A sharp edge, no runout, no chatter and the programmed feed are assumed; a dull edge doubles them.
+They are no proof that a cut is safe."""
+LABELS = """\
+Labels and engagement assume the stock and the cutter diameters stated here, a rigid cutter, and that all that was
+cut is gone."""
+SIZES = """\
+Sizes are estimates of the lash model alone: the lash entered, friction holding the axes except where a drag is told,
+no deflection, no thermal growth, cutter diameter as stated.
+The range of a size covers the stated uncertainty of the lash and dragging, nothing else."""
+
+
 def _assumptions(job: Job, sized: list[Feature]) -> Iterator[str]:
-    """What belongs beside every force and size."""
+    """What belongs beside every force and size, one sentence after the other."""
     material = job.material
     if material is not None:
-        yield (
-            f"Forces are estimates of the mean over a turn for {material.name} ({material.source}): expect "
-            f"{material.low:g} to {material.high:g} times the figures. A sharp edge, no runout, no chatter and the "
-            "programmed feed are assumed; a dull edge doubles them. They are no proof that a cut is safe."
-        )
-    yield (
-        "Labels and engagement assume the stock and the cutter diameters stated here, a rigid cutter, and that all that "
-        "was cut is gone."
-    )
+        yield _flowing(FORCE.format(name=material.name, source=material.source, low=material.low, high=material.high))
+    yield _flowing(LABELS)
     if sized:
-        yield (
-            "Sizes are estimates of the lash model alone: the lash entered, friction holding the axes except where a drag "
-            "is told, no deflection, no thermal growth, cutter diameter as stated. The range of a size covers the stated "
-            "uncertainty of the lash and dragging, nothing else."
-        )
+        yield _flowing(SIZES)
+
+
+def _flowing(text: str) -> str:
+    return text.replace("\n", " ")

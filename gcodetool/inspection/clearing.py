@@ -65,10 +65,8 @@ class Grid:
 
     def centres(self, cells: Ints) -> tuple[Floats, Floats]:
         """The middles of cells."""
-        return (
-            self.x + (cells % self.columns + 0.5) * self.size,
-            self.y + (cells // self.columns + 0.5) * self.size,
-        )
+        column, row = (cells % self.columns).astype(np.float64), (cells // self.columns).astype(np.float64)
+        return self.x + (column + 0.5) * self.size, self.y + (row + 0.5) * self.size
 
     def boxes(self, low_x: Floats, low_y: Floats, high_x: Floats, high_y: Floats) -> tuple[Ints, Ints]:
         """All cells of rectangles: ``(row, cell)``."""

@@ -1,8 +1,9 @@
 """Distance between two paths, curve against curve; both are lists of pieces in travel order.
 
-The distance is that of Hausdorff taken inside a window that moves along both paths: each point of one path to the nearest
-point of the other near the same place of the journey, and the other way round.  Where both paths fall into the same lines
-and arcs it is bounded piece by piece instead, which is quicker and never smaller.  Lengths in mm (degrees on A B C).
+The distance is that of Hausdorff taken inside a window that moves along both paths: each point of one path to the
+nearest point of the other near the same place of the journey, and the other way round.  Where both paths fall into
+the same lines and arcs it is bounded piece by piece instead, which is quicker and never smaller.  Lengths in mm
+(degrees on A B C).
 """
 
 from __future__ import annotations
@@ -121,7 +122,8 @@ def _line_by_line(first: Sequence[Piece], second: Sequence[Piece]) -> Gap | None
 def _walk(first: Sequence[Piece], second: Sequence[Piece]) -> Gap | None:
     """Walk both paths at once, each point against the three pieces around it; None where they part.
 
-    Of the three ways to step on, the one that brings the ends nearest is taken; a circle has to be swept before it is left.
+    Of the three ways to step on, the one that brings the ends nearest is taken; a circle has to be swept before it is
+    left.
     """
     worst = _apart(first[0].start, second[0].start, first[0], second[0])
     i = j = 0
@@ -262,7 +264,8 @@ def _nearest(points: Floats, path: Floats) -> tuple[Floats, Floats, NDArray[np.i
     travelled, along = _lengths(points), _lengths(path)
     for low in range(0, len(points), STEP):
         chunk = points[low : low + STEP]
-        # both paths are about as long: the same share of the journey is the place to look at, on circles run round twice too
+        # both paths are about as long: the same share of the journey is the place to look at, on circles run round
+        # twice too
         first, last = np.searchsorted(
             along, travelled[[low, low + len(chunk) - 1]] * along[-1] / (travelled[-1] or 1.0)
         )

@@ -2,14 +2,16 @@
 
 Words of the trade used here:
 
-climb, conventional   material on the right of the feed, on the left (spindle M3, right-hand cutter); slot: on both
-sides engagement            the angles of the cutter's circle that meet material; 0 left of the feed, 90 deg ahead,
-180 deg right radial width          material removed per mm of feed and mm of depth; for a straight cut the radial
-depth of cut ae axial depth           height of the material that the cutter meets, ap chip load             feed per
-tooth, fz held, doubtful, dragged   whether friction and preload keep an axis on its flank against the cut
+climb, conventional   material on the right of the feed, on the left (M3, right-hand cutter); slot: on both sides
+engagement            the angles of the cutter's circle that meet material: 0 left of the feed, 90 deg ahead, 180 right
+radial width          material removed per mm of feed and of depth; for a straight cut the radial depth of cut ae
+axial depth           height of the material that the cutter meets, ap
+chip load             feed per tooth, fz
+held, doubtful,       whether friction and preload keep an axis on its flank against the cut
+dragged
 
 Lengths are mm, angles radians unless a name says otherwise, feeds mm/min, forces N, times s.  Positions are those of
-the cutter's tip in machine coordinates, which are the program's own where no work offset is given.
+the cutter's tip in program coordinates.
 """
 
 from __future__ import annotations
@@ -103,12 +105,14 @@ class Cutters:
 class Path:
     """All moves of a program as columns; row k is one move.
 
-    ``start`` and ``end`` are (n, 3) positions of the tip.  ``plane`` is 0 for a line, else 1, 2, 3 for an arc in XY,
-    ZX, YZ, with ``centre`` (n, 2), ``radius``, ``angle`` (start) and ``sweep`` in that plane.  ``feed`` in mm/min and
-    ``speed`` in rpm are nan where never said; ``sense`` is +1 for M3, -1 for M4, 0 while the spindle stands.
-    ``tool`` is an index into ``cutters``. ``length_offset`` is added to Z to get the machine position.  ``chain``
-    counts contours: it grows at every rapid.  ``turning`` marks moves of rotary axes.  ``stops`` are the (line, word)
-    of tool changes, homings, probes and stops before each move.
+    ``start`` and ``end`` are (n, 3) positions of the tip.  ``plane`` is 0 for a line, else 1, 2, 3 for an arc in XY, ZX,
+    YZ, with ``centre`` (n, 2), ``radius``, ``angle`` (start) and ``sweep`` in that plane.  ``feed`` in mm/min and ``speed``
+    in rpm are nan where never said; ``sense`` is +1 for M3, -1 for M4, 0 while the spindle stands.  ``tool`` is an index
+    into the cutters of the job.  ``chain`` counts contours: it grows at every rapid and every stop.  ``turning`` marks moves
+    of rotary axes, ``unplaced`` those that begin at a place which the program has not said.
+
+    ``base`` is the machine position of program zero, known for the axes in ``placed``; the machine position of Z is that of
+    the tip plus ``base`` plus ``length_offset``.  ``systems`` are the work offsets in which the program cuts.
     """
 
     line: Ints
@@ -129,8 +133,9 @@ class Path:
     turning: Flags
     unplaced: Flags
     chain: Ints
-    events: tuple[tuple[int, int, str], ...]
-    tool_words: tuple[str, ...] = ()
+    base: tuple[float, float, float] = (0.0, 0.0, 0.0)
+    placed: str = ""
+    systems: tuple[str, ...] = ()
 
     @property
     def count(self) -> int:

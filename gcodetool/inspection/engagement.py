@@ -212,7 +212,8 @@ class _Follower:
         move = self.samples.move[rows]
         fall = self.path.start[move, 2] - self.path.end[move, 2]
         steep = fall > np.where(self.samples.vertical[rows], 0.0, STEEP * self.path.length[move])
-        return steep & (self.samples.z[rows] < self.top - NO_HEIGHT)
+        found: Flags = steep & (self.samples.z[rows] < self.top - NO_HEIGHT)
+        return found
 
     def _end_face(self, rows: Ints) -> None:
         """The share of the end face that stands on material, and the volume that a plunge removes."""

@@ -97,7 +97,8 @@ def _goes_on(path: Path, last: int, k: int) -> bool:
 
 
 def _whole(path: Path, run: list[int]) -> Iterator[_Group]:
-    turned, moves = 0.0, []
+    turned = 0.0
+    moves: list[int] = []
     for k in reversed(run):
         moves.insert(0, k)
         turned += abs(float(path.sweep[k]))

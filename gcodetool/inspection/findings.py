@@ -16,6 +16,7 @@ from gcodetool.inspection.audit_records import AxisEnvelope, Feature, Finding, S
 from gcodetool.inspection.cutting_records import (
     Cut,
     Engagement,
+    Flags,
     Floats,
     Forces,
     Hold,
@@ -79,6 +80,7 @@ CODES = {
             "no lash was given, so sizes come out as intended",
             "Name the machine sheet, or give --lash x=0.12",
         ),
+        Code(108, CAUTION, "work offsets of unknown place are used", "State each: --offset G54:x=.. --offset G55:x=.."),
         Code(201, DANGER, "the spindle does not turn in a cut", "Start it with S and M3 before the first cut"),
         Code(
             202,
@@ -106,7 +108,7 @@ CODES = {
         Code(306, CAUTION, "a spindle speed is outside the machine's range", "Choose S within the range"),
         Code(307, DANGER, "a spindle speed is above what is marked on the cutter", "Reduce S below the mark"),
         Code(308, CAUTION, "the cut goes below the stock", "Check the depth; a backing board must lie below"),
-        Code(309, NOTE, "machine positions are not known", "State --zero x=.. to compare positions with the travel"),
+        Code(309, NOTE, "machine positions are not known", "State the work offset: --offset G54:x=-150"),
         Code(
             310, CAUTION, "little Z travel is left below the deepest point", "Raise the work or hold the cutter longer"
         ),
@@ -162,6 +164,9 @@ def of_assumptions(
         yield finding(
             104, int(path.line[where[0]]), "feed or spindle speed is not known here", count=len(np.unique(where))
         )
+    if len(path.systems) > 1 and not path.placed:
+        words = " ".join(path.systems)
+        yield finding(108, 0, f"{words} are taken to be at one place, so what is cut in one counts as cut in all")
     turning = np.flatnonzero(path.turning)
     if len(turning):
         yield finding(106, int(path.line[turning[0]]), "a rotary axis moves: left out", count=len(turning))

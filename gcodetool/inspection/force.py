@@ -80,7 +80,7 @@ def mean_force(
 def chip_loads(path: Path, cutters: Cutters, move: Ints) -> Floats:
     """Feed per tooth, mm; nan where feed, speed or the number of flutes is not known."""
     rate = path.speed[move] * cutters.flutes[path.tool[move]]
-    return np.divide(path.feed[move], rate, out=np.full(len(move), np.nan), where=rate > 0.0)
+    return _share(path.feed[move], rate)
 
 
 def mean_chip(chip_load: Floats, first: Floats, last: Floats) -> Floats:
@@ -110,8 +110,8 @@ def forces(
     tall = slices.high - slices.low
     chip = mean_chip(load_here, first, last)
     weight = tall * (last - first)
-    total = np.bincount(slices.sample, weight, count)
-    average = _share(np.bincount(slices.sample, weight * chip, count), total)
+    total = _sum(slices.sample, weight, count)
+    average = _share(_sum(slices.sample, weight * chip, count), total)
     thick = np.zeros(count)
     np.fmax.at(thick, slices.sample, largest_sine(first, last))
     none = np.full(count, np.nan)
@@ -120,7 +120,7 @@ def forces(
         return Forces(none, none, none, none, none, none, none, load, average, thinning)
     k = coefficients(material, np.nan_to_num(chip, nan=1e-3))
     along, left, axial, tangential = (
-        np.bincount(slices.sample, part, count).astype(float)
+        _sum(slices.sample, part, count)
         for part in mean_force(first, last, tall, load_here, cutters.flutes[tool_here], k)
     )
     left *= cutters.hand[tool]
@@ -135,7 +135,14 @@ def forces(
 
 
 def _share(part: Floats, whole: Floats) -> Floats:
-    return np.divide(part, whole, out=np.full(len(part), np.nan), where=whole > 0.0)
+    """Part over whole, nan where there is no whole."""
+    found = np.full(len(part), np.nan)
+    np.divide(part, whole, out=found, where=whole > 0.0)
+    return found
+
+
+def _sum(sample: Ints, values: Floats, count: int) -> Floats:
+    return np.bincount(sample, values, count).astype(np.float64)
 
 
 def _peak(material: Material, average: Floats, load: Floats, thick: Floats, depth: Floats) -> Floats:
@@ -191,7 +198,8 @@ def _over(pushed: Floats, threshold: Floats, moving: Flags | None = None) -> Flo
     """Ratio; where nothing holds, endless for any push (and for none where a weak spring opens by friction alone)."""
     safe = np.where(threshold > 0.0, threshold, 1.0)
     bare = pushed > 0.0 if moving is None else (pushed > 0.0) | moving
-    return np.where(threshold > 0.0, pushed / safe, np.where(bare, ENDLESS, 0.0))
+    found: Floats = np.where(threshold > 0.0, pushed / safe, np.where(bare, ENDLESS, 0.0))
+    return found
 
 
 def ways(component: Floats) -> Floats:

@@ -5,7 +5,6 @@ Lengths are mm, speeds rpm, feeds mm/min, positions in program coordinates.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from dataclasses import dataclass
 
 Point = tuple[float, float]
@@ -86,9 +85,8 @@ class Material:
 class Job:
     """What the machine is to cut: stock, tools, clamps, material, and what the program does not say.
 
-    ``speed`` in rpm and ``feed`` in mm/min count where the program states none.  ``zero`` is the machine position of
-    program zero by axis letter, None where it is not known.  ``tolerance`` is the size error that is worth a finding,
-    mm.
+    ``speed`` in rpm and ``feed`` in mm/min count where the program states none.  ``least_speed`` and ``most_speed`` are
+    the range of the machine's spindle.  ``tolerance`` is the size error that is worth a finding, mm.
     """
 
     cutters: tuple[Cutter, ...] = ()
@@ -99,5 +97,4 @@ class Job:
     feed: float | None = None
     least_speed: float | None = None
     most_speed: float | None = None
-    zero: Mapping[str, float] | None = None
     tolerance: float = 0.05

@@ -1,6 +1,7 @@
 """The job sheet: stock, tools, clamps and material of one job, read from TOML or from options.
 
-It loads neither numpy nor shapely.  Lengths are mm, speeds rpm, feeds mm/min, positions in program coordinates, whatever units the program uses.
+It loads neither numpy nor shapely.  Lengths are mm, speeds rpm, feeds mm/min, positions in program coordinates,
+whatever units the program uses.
 """
 
 from __future__ import annotations
@@ -47,12 +48,10 @@ def parse_job(text: str, label: str = "job sheet") -> Job:
 def _read(tree: Mapping[str, Any], faults: list[str]) -> Job:
     _unknown(tree, ("job", "stock", "tools", "keep_out", "material"), "table", faults)
     table = _table(tree, "job", faults)
-    _unknown(table, (*_JOB_NUMBERS, "material", "zero"), "key", faults, "job.")
+    _unknown(table, (*_JOB_NUMBERS, "material"), "key", faults, "job.")
     values: dict[str, Any] = {
         key: _take(table, key, _above_zero, "job", faults) for key in _JOB_NUMBERS if key in table
     }
-    if "zero" in table:
-        values["zero"] = _take(table, "zero", _zero, "job", faults)
     material = _material(tree, table, faults)
     tools = _table(tree, "tools", faults)
     cutters = [_cutter(number, each, faults) for number, each in tools.items()]
@@ -118,12 +117,6 @@ def _text(value: Any) -> str:
     if not isinstance(value, str) or not value.isprintable():
         raise _Wrong("must be text in quotes, on one line")
     return value
-
-
-def _zero(value: Any) -> dict[str, float]:
-    if not isinstance(value, dict) or not all(key.upper() in ("X", "Y", "Z") for key in value):
-        raise _Wrong("must be the machine position of program zero by axis: { x = -150, y = -100, z = -40 }")
-    return {key.upper(): _number(number) for key, number in value.items()}
 
 
 # ---- tools -----------------------------------------------------------------------------------------------------------
@@ -285,7 +278,7 @@ def keep_out_from_option(text: str) -> KeepOut:
 
 def job_from_options(
     sheet: Job | None = None, *, tools: Iterable[str] = (), stock: str | None = None, top: float | None = None,
-    bottom: float | None = None, keep_outs: Iterable[str] = (), material: str | None = None, zero: Iterable[str] = (),
+    bottom: float | None = None, keep_outs: Iterable[str] = (), material: str | None = None,
     **numbers: float | None,
 ) -> Job:  # fmt: skip
     """A job from options laid over a sheet: what is given replaces the sheet's value.  Raises SheetError."""
@@ -303,21 +296,8 @@ def job_from_options(
     changes["keep_outs"] = (*job.keep_outs, *map(keep_out_from_option, keep_outs))
     if material is not None:
         changes["material"] = material_named(material)
-    places = dict(_place(text) for text in zero)
-    if places:
-        changes["zero"] = {**(job.zero or {}), **places}
     for key, value in numbers.items():
         if value is not None and not (math.isfinite(value) and value > 0.0):
             raise SheetError(f"--{key.replace('_', '-')} {value}: must be more than 0")
     changes.update((key, value) for key, value in numbers.items() if value is not None)
     return replace(job, **changes)
-
-
-def _place(text: str) -> tuple[str, float]:
-    name, _, value = text.partition("=")
-    try:
-        if name.strip().upper() not in ("X", "Y", "Z"):
-            raise _Wrong("write an axis, = and the machine position of program zero: --zero x=-150")
-        return name.strip().upper(), _parsed(value)
-    except _Wrong as fault:
-        raise SheetError(f"--zero {text}: {fault}") from None

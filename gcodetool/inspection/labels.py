@@ -101,7 +101,8 @@ def rubbing(engagement: Engagement, by_sample: Ints) -> Floats:
     """1 where a sample removes nothing to speak of but rubs along what is there, else 0."""
     film = np.zeros(len(by_sample), np.bool_)
     film[engagement.slices.sample] = True
-    return ((engagement.touching | film) & (by_sample == Label.AIR) & ~engagement.samples.vertical).astype(float)
+    found: Flags = (engagement.touching | film) & (by_sample == Label.AIR) & ~engagement.samples.vertical
+    return found.astype(float)
 
 
 def kinds(path: Path) -> Ints:

@@ -31,7 +31,7 @@ class Hit:
     name: str = ""
 
 
-def envelope(path: Path, machine: Machine, job: Job) -> list[AxisEnvelope]:
+def envelope(path: Path, machine: Machine) -> list[AxisEnvelope]:
     """The commanded range of X, Y and Z in machine positions, as compensation would command it.
 
     Take-ups reach one lash beyond the path, away from the datum side; settles one lash and the settle margin past the
@@ -43,7 +43,7 @@ def envelope(path: Path, machine: Machine, job: Job) -> list[AxisEnvelope]:
         used = ~path.unplaced | ~path.rapid
         if not used.any() or not np.any(path.start[:, k] != path.end[:, k]):
             continue
-        offset = path.length_offset if letter == "Z" else np.zeros(path.count)
+        offset = path.base[k] + (path.length_offset if letter == "Z" else np.zeros(path.count))
         move, place = turning_points(path, k)
         place = (place + offset[move])[used[move]]
         lash, away = float(axis.lash), -axis.datum
@@ -54,8 +54,7 @@ def envelope(path: Path, machine: Machine, job: Job) -> list[AxisEnvelope]:
             past = (path.end[first, k] + offset[first]) + away * (lash + float(machine.settle_margin))
             low, high = min(low, float(past.min())), max(high, float(past.max()))
         travel = None if axis.travel is None else (float(axis.travel[0]), float(axis.travel[1]))
-        placed = job.zero is not None and letter in job.zero
-        found.append(AxisEnvelope(letter, low, high, travel, placed))
+        found.append(AxisEnvelope(letter, low, high, travel, letter in path.placed))
     return found
 
 

@@ -14,7 +14,7 @@ from gcodetool.program.numbers import QUANTA_PER_MM, decimal_to_quanta
 def some_setup(
     seed: int, machine: Machine, stated: Settings, first_offset: str = "G54", skip_deletable: bool = False
 ) -> Setup:
-    """Arbitrary values for what neither program nor operator says; the second set has a changer that moves the machine."""
+    """Arbitrary values for what neither program nor operator says; even seeds have a changer that moves the machine."""
     rng = random.Random(seed)
     sign = 1 if seed % 2 else -1
 

@@ -3,17 +3,16 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Sequence
 
 import numpy as np
-from numpy.typing import NDArray
 
 from gcodetool.errors import SheetError
 from gcodetool.inspection.cutting_records import Flags, Floats, Ints, Path
 from gcodetool.inspection.job_records import Cutter, Job
 from gcodetool.inspection.swept import A0, COLUMNS, CX, CY, RC, SWEEP, TOOL, X0, X1, Y0, Y1, Z0, Z1
 from gcodetool.motion.controller import Controller
-from gcodetool.motion.moves import ORDER, Event, Move, Setup
+from gcodetool.motion.moves import Event, Move, Setup
 from gcodetool.program.blocks import Block
 from gcodetool.program.numbers import QUANTA_PER_MM
 
@@ -27,36 +26,40 @@ SEXTANT = math.pi / 3.0
 _FINE = 1e-9
 
 
-def read_path(blocks: Iterable[Block], job: Job, units: str | None = None) -> Path:
-    """All moves of a program.
+def read_path(blocks: Iterable[Block], job: Job, setup: Setup) -> Path:
+    """All moves of a program; ``setup`` says what the program does not: units, work offsets, tool lengths.
 
+    Positions count from the program zero of the first cut, so that stock and clamps have the program's coordinates.
     Every axis counts as standing at program zero, at an unknown place, before the program says otherwise.  Raises
     Refusal, and SheetError where a feed motion uses a tool that the job does not know.
     """
-    controller = Controller(Setup(units=units, offsets=_offsets(job.zero), unplaced=ORDER))
+    controller = Controller(setup)
     rows: list[tuple[object, ...]] = []
-    events: list[tuple[int, int, str]] = []
     tools: dict[str, int] = {}
-    chain = 0
+    systems: list[str] = []
+    chain, base = 0, (0.0, 0.0, 0.0)
     for happening in controller.run(blocks):
         if isinstance(happening, Event):
-            events.append((len(rows), happening.line, happening.what))
             chain += 1
             continue
         if happening.start == happening.end and happening.arc is None:
             continue
         chain += happening.rapid
+        if not happening.rapid and controller.frames.active not in systems:
+            systems.append(controller.frames.active)
+            base = base if len(systems) > 1 else _base(setup, systems[0])
         unknown = bool(controller.unplaced) and any(letter in controller.unplaced for letter in "XYZ")
-        offset = controller.frames.length / QUANTA_PER_MM
-        rows.append(_row(happening, _tool(happening, job.cutters, tools), offset, unknown, chain, job))
-    return _columns(rows, tuple(events), tuple(tools))
+        length = controller.frames.length / QUANTA_PER_MM
+        rows.append(_row(happening, _tool(happening, job.cutters, tools), length, unknown, chain, job))
+    placed = "".join(sorted(setup.offsets.get(systems[0], {}))) if systems else ""
+    return _columns(rows, base, placed, tuple(systems))
 
 
-def _offsets(zero: Mapping[str, float] | None) -> Mapping[str, Mapping[str, int]]:
-    if zero is None:
-        return {}
-    place = {letter: round(value * QUANTA_PER_MM) for letter, value in zero.items()}
-    return {f"G{number}": place for number in (54, 55, 56, 57, 58, 59, "59.1", "59.2", "59.3")}
+def _base(setup: Setup, system: str) -> tuple[float, float, float]:
+    """Machine position of the zero of a work offset, mm."""
+    offset = setup.offsets.get(system, {})
+    x, y, z = (offset.get(letter, 0) / QUANTA_PER_MM for letter in "XYZ")
+    return x, y, z
 
 
 def _tool(move: Move, cutters: Sequence[Cutter], seen: dict[str, int]) -> int:
@@ -74,7 +77,7 @@ def _tool(move: Move, cutters: Sequence[Cutter], seen: dict[str, int]) -> int:
         found = -1
     else:
         name = f"tool T{word}" if move.context.tool else "the tool, to which the program gives no T word"
-        key = word if move.context.tool else "*"
+        key = word if move.context.tool else "any"
         raise SheetError(
             f"line {move.line}: nothing is known of {name}: state its diameter in mm, as --tool {key}=3.175, "
             "or in the job sheet"
@@ -128,15 +131,21 @@ def _feed(move: Move, length: float, speed: float | None, job: Job) -> float:
     return feed
 
 
-def _columns(rows: list[tuple[object, ...]], events: tuple[tuple[int, int, str], ...], tools: tuple[str, ...]) -> Path:
+def _columns(
+    rows: list[tuple[object, ...]], base: tuple[float, float, float], placed: str, systems: tuple[str, ...]
+) -> Path:
     table = np.array(rows, float).reshape(len(rows), 23)
     whole = table[:, [0, 8, 17, 18]].astype(np.int64)
+    plane, centre = whole[:, 1], table[:, 9:11].copy()
+    for number, pair in enumerate(PLANE_PAIRS):
+        if number:
+            centre[plane == number] -= [base[pair[0]], base[pair[1]]]
     return Path(
-        line=whole[:, 0], rapid=table[:, 1] > 0.0, start=table[:, 2:5].copy(), end=table[:, 5:8].copy(),
-        plane=whole[:, 1], centre=table[:, 9:11].copy(), radius=table[:, 11].copy(), angle=table[:, 12].copy(),
+        line=whole[:, 0], rapid=table[:, 1] > 0.0, start=table[:, 2:5] - base, end=table[:, 5:8] - base,
+        plane=plane, centre=centre, radius=table[:, 11].copy(), angle=table[:, 12].copy(),
         sweep=table[:, 13].copy(), length=table[:, 14].copy(), feed=table[:, 15].copy(), speed=table[:, 16].copy(),
         sense=whole[:, 2], tool=whole[:, 3], length_offset=table[:, 19].copy(), turning=table[:, 20] > 0.0,
-        unplaced=table[:, 21] > 0.0, chain=table[:, 22].astype(np.int64), events=events, tool_words=tools,
+        unplaced=table[:, 21] > 0.0, chain=table[:, 22].astype(np.int64), base=base, placed=placed, systems=systems,
     )  # fmt: skip
 
 
@@ -207,7 +216,8 @@ def directions(path: Path, move: Ints, share: Floats) -> tuple[Floats, Floats, F
     return np.where(vertical, 1.0, step[:, 0] / safe), np.where(vertical, 0.0, step[:, 1] / safe), vertical
 
 
-def vertical_moves(path: Path) -> NDArray[np.bool_]:
+def vertical_moves(path: Path) -> Flags:
     """Straight moves along Z alone."""
     still = np.all(np.abs(path.end[:, :2] - path.start[:, :2]) < _FINE, axis=1)
-    return still & (path.plane == 0) & (np.abs(path.end[:, 2] - path.start[:, 2]) > _FINE)
+    found: Flags = still & (path.plane == 0) & (np.abs(path.end[:, 2] - path.start[:, 2]) > _FINE)
+    return found

@@ -1,9 +1,9 @@
 """The proof: original and result are read anew, driven through the play of each axis, and their tool paths compared.
 
-It shares the reading of programs with the rewriter and nothing else.  The original runs on a machine without lash; the result
-runs on the machine as measured, from every corner of what is not known: each axis on either side at the start and after each
-tool change, home point or machine coordinate.  Work offsets, tool lengths, home points and the start position are not in the
-program; two different sets of arbitrary values stand for them.
+It shares the reading of programs with the rewriter and nothing else.  The original runs on a machine without lash;
+the result runs on the machine as measured, from every corner of what is not known: each axis on either side at the
+start and after each tool change, home point or machine coordinate.  Work offsets, tool lengths, home points and the
+start position are not in the program; two different sets of arbitrary values stand for them.
 """
 
 from __future__ import annotations
@@ -37,9 +37,10 @@ Blocks = Callable[[], Iterable[Block]]
 class Verdict:
     """What the proof found; lengths in mm, degrees on A B C.
 
-    ``feed`` is the widest gap on feed motion, ``stray`` the widest of the rapids, ``uncompensated`` the widest gap on feed
-    motion of the original program under the same lash.  ``broken`` says where the two programs do not even have the same
-    feed and rapid motions, "" where they do.  ``runs`` counts simulated machines, ``corners`` start sides tried.
+    ``feed`` is the widest gap on feed motion, ``stray`` the widest of the rapids, ``uncompensated`` the widest gap on
+    feed motion of the original program under the same lash.  ``broken`` says where the two programs do not even have
+    the same feed and rapid motions, "" where they do.  ``runs`` counts simulated machines, ``corners`` start sides
+    tried.
     """
 
     feed: Gap = field(default_factory=Gap)
@@ -73,7 +74,7 @@ class Verdict:
 
 
 class Run(NamedTuple):
-    """Motion without a change between rapid and feed: its pieces, where the tool stands after it, its last source line."""
+    """Motion without a change between rapid and feed: its pieces, where the tool is after it, its last source line."""
 
     rapid: bool
     pieces: list[Piece]
@@ -86,9 +87,9 @@ def verify(
 ) -> Verdict:
     """Compare two programs; ``original`` and ``result`` give the blocks of a program anew at every call.
 
-    ``stated`` is what the operator has said of the start, of offsets and tool lengths; the simulated machines keep to it.
-    ``tolerance`` in mm; by default 0.0006, or the largest ripple of the machine where that is more.  Raises Refusal where a
-    program cannot be read.
+    ``stated`` is what the operator has said of the start, of offsets and tool lengths; the simulated machines keep to
+    it. ``tolerance`` in mm; by default 0.0006, or the largest ripple of the machine where that is more.  Raises
+    Refusal where a program cannot be read.
     """
     lashed = [axis for axis in machine.axes.values() if axis.lash > 0]
     ripple = max((float(axis.ripple or 0) for axis in lashed), default=0.0)
@@ -352,7 +353,8 @@ def _broken(want: Run | None, have: Run | None) -> str:
         return f"the result goes on after the original has ended (result line {have.pieces[0].line})"
     if have is None and want is not None:
         return f"the result ends before the original has (original line {want.pieces[0].line})"
-    assert want is not None and have is not None
+    assert want is not None
+    assert have is not None
     return (
         f"original line {want.pieces[0].line} is a {names[want.rapid]} where "
         f"result line {have.pieces[0].line} is a {names[have.rapid]}"
@@ -362,8 +364,8 @@ def _broken(want: Run | None, have: Run | None) -> str:
 def _uncompensated(blocks: Iterable[Block], machine: Machine, setup: Setup, stated: Settings) -> Verdict:
     """What the original would do on this machine: each feed move against the path it should have taken.
 
-    The table lags behind its drive, so a point is compared with the move it belongs to and the one before; and the end of
-    each move with the path that the table takes in it and in the next one.
+    The table lags behind its drive, so a point is compared with the move it belongs to and the one before; and the
+    end of each move with the path that the table takes in it and in the next one.
     """
     follower = _Fleet(machine, setup, stated).base.follower
     worst = Gap()

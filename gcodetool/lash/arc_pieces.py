@@ -1,11 +1,13 @@
 """Where an arc must be cut so that each piece keeps one side on every axis; plain geometry, no text.
 
-A reversal of a plane axis lies at a quadrant point.  The arc is cut there only where the axis moves by more than its ripple
-on both sides of the point: a piece so short that its written end is its written start would be read as a full circle.
+A reversal of a plane axis lies at a quadrant point.  The arc is cut there only where the axis moves by more than its
+ripple on both sides of the point: a piece so short that its written end is its written start would be read as a full
+circle.
 """
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Mapping
 from dataclasses import dataclass
 
@@ -89,5 +91,5 @@ def cut_long(pieces: tuple[Piece, ...], sweep: float) -> tuple[Piece, ...]:
             parts += 1
         step = (piece.end - piece.start) / parts
         bounds = [piece.start + k * step for k in range(parts)] + [piece.end]
-        done += [Piece(a, b, piece.sides) for a, b in zip(bounds, bounds[1:], strict=False)]
+        done += [Piece(a, b, piece.sides) for a, b in itertools.pairwise(bounds)]
     return tuple(done)

@@ -1,8 +1,8 @@
 """The stream: blocks in, text out, so that a controller without lash compensation cuts the intended part.
 
-Each block is read once, in the modal state of the program as written.  A block that asks for no motion passes as it is; one
-that does goes to ``straight`` or ``curved``.  Between blocks only the knowledge of the axes, the modal state and the few
-lines held for the slot are kept, so memory does not grow with the program.
+Each block is read once, in the modal state of the program as written.  A block that asks for no motion passes as it
+is; one that does goes to ``straight`` or ``curved``.  Between blocks only the knowledge of the axes, the modal state
+and the few lines held for the slot are kept, so memory does not grow with the program.
 """
 
 from __future__ import annotations
@@ -33,9 +33,14 @@ class Compensator:
     """One rewriting; ``feed_block`` for each block in order, then ``finish``."""
 
     def __init__(
-        self, machine: Machine, settings: Settings, write: Callable[[str], object], header: str = "", again: bool = False
+        self,
+        machine: Machine,
+        settings: Settings,
+        write: Callable[[str], object],
+        header: str = "",
+        again: bool = False,
     ) -> None:
-        """``header`` is the text of the comment to write near the top; ``again`` allows a program that has ours already."""
+        """``header`` is the comment to write near the top; ``again`` allows a program that has one already."""
         self.run = Running(machine, settings, write)
         self._doubt = Doubt(self.run)
         self._quick = Quick(self.run, self._ordinary, self._is_open)
@@ -135,7 +140,7 @@ class Compensator:
         self._execute(command)
         if before is not None:
             self.run.out.close()
-            self._doubt.merge(command, before)
+            self._doubt.merge(before)
 
     def _execute(self, command: Command) -> None:
         run = self.run
@@ -165,7 +170,9 @@ class Compensator:
         for word in command.m:
             code = M_CODES.get(word)
             if code is None:
-                self.tally.caution(f"{word} is not known and passes as it is: it must not move an axis", command.block.number)
+                self.tally.caution(
+                    f"{word} is not known and passes as it is: it must not move an axis", command.block.number
+                )
             elif code.group == "stop":
                 self.tally.caution(f"do not jog at {word}: it spoils what is known of the sides", command.block.number)
             elif code.group == "end":

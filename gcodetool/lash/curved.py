@@ -1,7 +1,7 @@
 """Arcs: split where a plane axis reverses, take up there, and write true arcs again.
 
-The first piece is the block itself with a nearer end, so that F, plane, units and comments stay where they act; the further
-pieces follow it.  Inside a piece the shift is constant, and a shifted arc is the same arc.
+The first piece is the block itself with a nearer end, so that F, plane, units and comments stay where they act; the
+further pieces follow it.  Inside a piece the shift is constant, and a shifted arc is the same arc.
 """
 
 from __future__ import annotations
@@ -134,7 +134,7 @@ def _take_up(task: _Task, piece: Piece, first: bool, in_air: bool = False) -> li
 
 
 def _split_point(task: _Task, share: float) -> dict[str, int]:
-    """End of a piece inside the arc, rounded to digits that can be written; all plane axes, the others where they move."""
+    """End of a piece inside the arc, rounded to digits that can be written: plane axes, and others that move."""
     point = task.move.arc.point(share)
     end = {}
     for letter in dict.fromkeys([*task.plane, *task.goal]):
@@ -236,10 +236,9 @@ def _end_number(task: _Task, axis: AxisKnowledge, target: int, piece: Piece) -> 
     want = 0 if axis.idle else axis.shift_on(piece.sides[axis.letter], inch)
     like = task.command.number(axis.letter).strip() if task.command.has(axis.letter) else "0"
     digit = INCH_DIGIT if inch else MM_DIGIT
+    value = target + want
     if state.distance == "G91":
-        value = target - axis.position + want - (axis.shift or 0)
-    else:
-        value = target + want
+        value -= axis.position + (axis.shift or 0)
     axis.shift = want
     return write_quanta(value, digit, task.places, like)
 
@@ -260,7 +259,7 @@ def _next(task: _Task, piece: Piece, end: Mapping[str, int], last: list[Word]) -
 
 
 def _share_of_time(command: Command, piece: Piece) -> str:
-    """F of a piece in inverse time (1/minutes): its share of the sweep is its share of the time (NISTIR 6556, 3.5.19)."""
+    """F of a piece in inverse time (1/minutes): its share of the sweep is that of the time (NISTIR 6556, 3.5.19)."""
     value, decimals = exact(command.number("F"))
     return f"{value / 10**decimals / (piece.end - piece.start):.6f}"
 

@@ -1,8 +1,8 @@
 """Deletable blocks: what is still known when a block may or may not have been run.
 
-With the switch in an unknown position a block that begins with ``/`` leaves two possible states.  What both agree on stays
-known.  An axis on which they differ is unknown, and is settled by its next rapid; a mode on which they differ must be
-stated again before it is used.
+With the switch in an unknown position a block that begins with ``/`` leaves two possible states.  What both agree on
+stays known.  An axis on which they differ is unknown, and is settled by its next rapid; a mode on which they differ
+must be stated again before it is used.
 """
 
 from __future__ import annotations
@@ -65,7 +65,7 @@ class Doubt:
         }
         return Snapshot(self._run.state, self._run.feed, axes)
 
-    def merge(self, command: Command, before: Snapshot) -> None:
+    def merge(self, before: Snapshot) -> None:
         """After a deletable block: keep what it has not changed."""
         after = self._run.state
         changed = {f.name for f in fields(ModalState) if getattr(after, f.name) != getattr(before.state, f.name)}

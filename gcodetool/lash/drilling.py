@@ -1,8 +1,8 @@
 """Drilling and boring cycles, kept as cycles; and probing.
 
-X and Y of a hole are folded like those of a rapid.  Depth and R are shifted by the shift of the lower side, so the bottom is
-exact; the return in air may stray by the lash.  After the cycle the normal axis is on its upper side with the command where
-the cycle put it, which is why it is *adrift*: the next motion puts that right.
+X and Y of a hole are folded like those of a rapid.  Depth and R are shifted by the shift of the lower side, so the
+bottom is exact; the return in air may stray by the lash.  After the cycle the normal axis is on its upper side with
+the command where the cycle put it, which is why it is *adrift*: the next motion puts that right.
 """
 
 from __future__ import annotations
@@ -26,7 +26,7 @@ _BRING = "Bring {0} to the hole with a rapid (G0) before the cycle"
 
 @dataclass(slots=True)
 class Drilling:
-    """The sticky words of the program as written, and R as it went out last (for G91, where it depends on the shift)."""
+    """The sticky words of the program as written, and R as it went out last (in G91 it depends on the shift)."""
 
     sticky: Sticky
     level_written: int | None = None
@@ -46,7 +46,7 @@ def cycle(run: Running, drilling: Drilling, command: Command) -> None:
     height = run.axes[plane[2]].position
     asked = read_cycle(command, drilling.sticky, height)
     before, sides = _approach(run, command, asked)
-    pieces = _plane_words(run, command, asked, sides)
+    pieces = _plane_words(run, command, sides)
     pieces = _depth_words(run, command, asked, pieces, drilling)
     if before:
         pieces = _respelled(run, command, asked, pieces, drilling)
@@ -76,7 +76,8 @@ def _low(run: Running, command: Command, axis: AxisKnowledge) -> int:
     return axis.shift_on(-1, run.is_inch(axis, command.after))
 
 
-# ---- where the holes are -----------------------------------------------------------------------------------------------
+# ---- where the holes are
+# -----------------------------------------------------------------------------------------------
 
 
 def _approach(run: Running, command: Command, asked: Cycle) -> tuple[list[str], dict[str, int]]:
@@ -110,11 +111,18 @@ def _hole_side(run: Running, command: Command, asked: Cycle, axis: AxisKnowledge
     return arrival_side(run, command, axis, step if asked.absolute else axis.position + step)
 
 
-def _settle(run: Running, command: Command, asked: Cycle, settle: Mapping[str, int], sides: Mapping[str, int]) -> list[str]:
+def _settle(
+    run: Running, command: Command, asked: Cycle, settle: Mapping[str, int], sides: Mapping[str, int]
+) -> list[str]:
     """Settle over the hole before the cycle, at the height at which the cycle itself would go there."""
     normal = run.axes[asked.plane[2]]
     letter = next(iter(settle))
-    if not asked.absolute or not normal.framed or normal.position < asked.level or command.after != _same_frame(command):
+    if (
+        not asked.absolute
+        or not normal.framed
+        or normal.position < asked.level
+        or command.after != _same_frame(command)
+    ):
         word = letter + command.number(letter).strip()
         reason = f"a cycle that starts from an unknown position or side of {letter}"
         raise command.refusal(word, reason, _BRING.format(letter))
@@ -133,7 +141,7 @@ def _settle(run: Running, command: Command, asked: Cycle, settle: Mapping[str, i
 
 
 def _same_frame(command: Command) -> ModalState:
-    """The modal state after the block if the block changes only its motion; lines before it are written in the same frame."""
+    """The modal state after the block if it changes only its motion: lines before it are written in the same frame."""
     return replace(command.before, motion=command.after.motion, retract=command.after.retract)
 
 
@@ -154,7 +162,7 @@ def _step_first(run: Running, command: Command, asked: Cycle, sides: Mapping[str
     return [new_line(words, run.look(command))]
 
 
-def _plane_words(run: Running, command: Command, asked: Cycle, sides: Mapping[str, int]) -> list[str]:
+def _plane_words(run: Running, command: Command, sides: Mapping[str, int]) -> list[str]:
     pieces = list(command.pieces)
     for letter, side in sides.items():
         axis = run.axes[letter]
@@ -167,7 +175,8 @@ def _plane_words(run: Running, command: Command, asked: Cycle, sides: Mapping[st
     return pieces
 
 
-# ---- how deep ----------------------------------------------------------------------------------------------------------
+# ---- how deep
+# ----------------------------------------------------------------------------------------------------------
 
 
 def _depth_words(run: Running, command: Command, asked: Cycle, pieces: list[str], drilling: Drilling) -> list[str]:
@@ -196,7 +205,7 @@ def _level_word(run: Running, command: Command, asked: Cycle, pieces: list[str],
         reason = f"an incremental cycle where it is not known how far {axis.letter} is off"
         raise command.refusal(asked.word, reason, f"Move {axis.letter} with a rapid (G0) in G90 before it")
     add = _low(run, command, axis) - axis.shift
-    text, digit = drilling.sticky.words["R"]
+    text, _ = drilling.sticky.words["R"]
     wanted = asked.level - axis.position + add
     if command.has("R"):
         index = command.shape.at["R"]
@@ -237,7 +246,8 @@ def _respelled(run: Running, command: Command, asked: Cycle, pieces: list[str], 
     return pieces
 
 
-# ---- how it is left ----------------------------------------------------------------------------------------------------
+# ---- how it is left
+# ----------------------------------------------------------------------------------------------------
 
 
 def _leave(run: Running, command: Command, asked: Cycle, sides: Mapping[str, int]) -> None:
@@ -280,11 +290,12 @@ def _leave_normal(run: Running, command: Command, asked: Cycle, axis: AxisKnowle
         axis.adrift = axis.shift != axis.shift_on(1, run.is_inch(axis, command.after))
 
 
-# ---- probing -----------------------------------------------------------------------------------------------------------
+# ---- probing
+# -----------------------------------------------------------------------------------------------------------
 
 
 def probe(run: Running, command: Command) -> None:
-    """G38: the target stays as it is; where it touches, the side is that of the motion and the position is not known."""
+    """G38: the target stays as it is; where it touches, the side is that of the motion, the position not known."""
     run.out.close()
     absolute = command.after.distance == "G90"
     texts = run.reseat(command)
@@ -299,4 +310,3 @@ def probe(run: Running, command: Command) -> None:
             axis.land(axis.position, 0 if axis.idle else 1 if way > 0 else -1, False)
             axis.shift = axis.shift_on(axis.side, run.is_inch(axis, command.after)) if axis.side else 0
     run.put(command, [*texts, join_words(run.with_feed(command, command.pieces))])
-

@@ -1,8 +1,8 @@
 """Holes reached from the datum side, with an overshoot, so that their place does not hang on the value of the lash.
 
-On the datum side command and actual position agree whatever the lash is.  An axis that has come to a hole on its other side
-goes on past it by the overshoot and comes back in the datum direction: after that way back it is on the datum side for any
-lash between 0 and the overshoot.
+On the datum side command and actual position agree whatever the lash is.  An axis that has come to a hole on its
+other side goes on past it by the overshoot and comes back in the datum direction: after that way back it is on the
+datum side for any lash between 0 and the overshoot.
 """
 
 from __future__ import annotations

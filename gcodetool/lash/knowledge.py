@@ -17,8 +17,11 @@ from gcodetool.program.numbers import INCH_DIGIT, MM_DIGIT, decimal_to_quanta, r
 
 @dataclass(frozen=True, slots=True)
 class Start:
-    """What the operator states of an axis before the first block: the position that the controller shows (mm, degrees) and
-    the side; None or 0 where unknown.  Off the datum side the axis is not where the controller shows it."""
+    """What the operator states of an axis before the first block.
+
+    The position is that which the controller shows (mm, degrees); None, or side 0, where unknown.  Off the datum side
+    the axis is not where the controller shows it.
+    """
 
     position: Decimal | None = None
     side: int = 0
@@ -27,14 +30,15 @@ class Start:
 class AxisKnowledge:
     """One axis; mutable, because it is the running state of the stream.
 
-    ``adrift`` is true where the shift in force does not belong to the side (after a drilling cycle has come back in air).
-    ``shift`` is the command minus the wanted position as last written, None where it is not known.  ``extreme`` is the
-    farthest position on the present side (see ``play.advance``).  ``decimals`` is the most that a word of this axis has had.
+    ``adrift`` is true where the shift in force does not belong to the side (after a drilling cycle has come back in
+    air). ``shift`` is the command minus the wanted position as last written, None where it is not known.  ``extreme``
+    is the farthest position on the present side (see ``play.advance``).  ``decimals`` is the most that a word of this
+    axis has had.
     """
 
     __slots__ = (
-        "adrift", "datum", "decimals", "extreme", "framed", "inch_lash", "letter", "margin", "mm_lash", "position", "ripple",
-        "rotary", "shift", "shifts", "side",
+        "adrift", "datum", "decimals", "extreme", "framed", "inch_lash", "letter", "margin", "mm_lash", "position",
+        "ripple", "rotary", "shift", "shifts", "side",
     )  # fmt: skip
 
     def __init__(self, axis: Axis, machine: Machine, start: Start) -> None:
@@ -48,7 +52,9 @@ class AxisKnowledge:
         # below the output resolution a reversal is rounding, not motion
         self.ripple = max(decimal_to_quanta(axis.ripple or Decimal(0)), MM_DIGIT[machine.decimals])
         # by inch or mm, then by side: shifts[False][-1] is the shift in mm on the side -
-        self.shifts = tuple((0, shift(1, lash, self.datum), shift(-1, lash, self.datum)) for lash in (self.mm_lash, self.inch_lash))
+        self.shifts = tuple(
+            (0, shift(1, lash, self.datum), shift(-1, lash, self.datum)) for lash in (self.mm_lash, self.inch_lash)
+        )
         self.margin = decimal_to_quanta(machine.settle_margin)
         self.position = self.extreme = decimal_to_quanta(start.position or Decimal(0))
         self.framed = start.position is not None
@@ -99,8 +105,8 @@ class AxisKnowledge:
     def lose_side(self, command_is_exact: bool) -> None:
         """Position and side are unknown from here on.
 
-        ``command_is_exact`` says that the command now stands where the original program's would (a home point, a machine
-        coordinate), so that no shift is in force; otherwise that is not known either, unless there was none.
+        ``command_is_exact`` says that the command now stands where the original program's would (a home point, a
+        machine coordinate), so that no shift is in force; otherwise that is not known either, unless there was none.
         """
         self.framed = False
         self.side = 0

@@ -1,7 +1,7 @@
-"""What the program itself tells of offsets: where both the old and the new value are known, positions follow the change.
+"""What the program itself tells of offsets.
 
-All in quanta.  A value that the program (or an option) has not given is unknown, and so is the position after it came into or
-went out of force.
+Where both the old and the new value are known, positions follow the change.  All in quanta.  A value that the program
+(or an option) has not given is unknown, and so is the position after it came into or went out of force.
 """
 
 from __future__ import annotations
@@ -147,7 +147,7 @@ class KnownFrames:
     def _set_zero(self, command: Command, pieces: list[str], system: str | None, letter: str) -> None:
         """L20: the present position gets a value in a work offset."""
         axis, index = self._run.axes[letter], command.shape.at[letter]
-        if system == command.after.offset and system is not None or system is None:
+        if (system == command.after.offset and system is not None) or system is None:
             self._call_position(command, pieces, letter, command.quanta(letter))
         else:
             if not axis.idle:
@@ -159,4 +159,3 @@ class KnownFrames:
                 axis.unframe()
         if system is not None:
             self._offsets.get(system, {}).pop(letter, None)
-

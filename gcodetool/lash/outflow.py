@@ -1,8 +1,8 @@
 """The outgoing lines, and the slot in which a take-up can be made in air.
 
-A take-up commutes with every block that has no word of its axis.  After a rapid the tool is in air, so a take-up that is
-first needed after a plunge is written right after the rapid instead, where it leaves no mark.  For that the blocks since
-the rapid are held back, at most ``look_ahead`` of them, and only while some axis could still use the slot.
+A take-up commutes with every block that has no word of its axis.  After a rapid the tool is in air, so a take-up that
+is first needed after a plunge is written right after the rapid instead, where it leaves no mark.  For that the blocks
+since the rapid are held back, at most ``look_ahead`` of them, and only while some axis could still use the slot.
 """
 
 from __future__ import annotations

@@ -1,12 +1,14 @@
 """The path the tool really takes: commanded moves driven through the play of each axis.
 
-Lines become one or more lines, with a corner where an axis gets into contact.  Arcs become arcs with a shifted centre while
-all their axes are in contact, and straight flats while one of them stands still.  Lengths in mm, angles in degrees.
+Lines become one or more lines, with a corner where an axis gets into contact.  Arcs become arcs with a shifted centre
+while all their axes are in contact, and straight flats while one of them stands still.  Lengths in mm, angles in
+degrees.
 """
 
 from __future__ import annotations
 
 import copy
+import itertools
 import math
 from collections.abc import Iterator, Mapping, Sequence
 from typing import NamedTuple
@@ -26,8 +28,8 @@ Vector = tuple[float, ...]
 class Piece(NamedTuple):
     """A part of a path: a straight line, or an arc in the plane of ``axes`` with all other axes linear in its angle.
 
-    ``start`` and ``end`` have six numbers, X Y Z A B C.  ``loose`` is true where an axis that moves started on a side that
-    nothing in the program had made known; ``hole`` is that of the move.
+    ``start`` and ``end`` have six numbers, X Y Z A B C.  ``loose`` is true where an axis that moves started on a side
+    that nothing in the program had made known; ``hole`` is that of the move.
     """
 
     rapid: bool
@@ -59,8 +61,8 @@ def _mm(position: Sequence[int]) -> Vector:
 class Follower:
     """The table (or tool) behind the drives; ``drive`` yields the pieces of its path for each commanded move.
 
-    ``lash`` and ``datum`` by axis letter; ``side`` is the side of every axis at the start and after each event that loses it;
-    ``known`` are the axes whose side at the start is known, and which it is.
+    ``lash`` and ``datum`` by axis letter; ``side`` is the side of every axis at the start and after each event that
+    loses it; ``known`` are the axes whose side at the start is known, and which it is.
     """
 
     def __init__(
@@ -96,7 +98,8 @@ class Follower:
     def lose(self, at: Sequence[int], letters: str, kept: bool = False) -> None:
         """Put these axes on their unknown side again, the command standing at ``at``.
 
-        Until it moves, such an axis counts as where its command is; with ``kept`` as where it was, unless it has been moved.
+        Until it moves, such an axis counts as where its command is; with ``kept`` as where it was, unless it has been
+        moved.
         """
         self._note_offsets(at, letters, kept)
         for k in range(6):
@@ -160,11 +163,11 @@ class Follower:
             if way:
                 share = (self.actual[k] + self._shift(k, 1 if way > 0 else -1) - begin[k]) / way
                 starts.append((k, share))
-                if CONTACT < share * abs(way) and share < 1.0:
+                if share * abs(way) > CONTACT and share < 1.0:
                     cuts.add(share)
         bounds = [0.0, *sorted(cuts), 1.0]
         now = self._line_point(begin, end, starts, 0.0)
-        for low, high in zip(bounds, bounds[1:], strict=False):
+        for low, high in itertools.pairwise(bounds):
             then = self._line_point(begin, end, starts, high)
             yield Piece(
                 move.rapid, move.line,
@@ -188,7 +191,7 @@ class Follower:
     def _arc(self, move: Move, arc: Arc) -> Iterator[Piece]:
         command = Piece(move.rapid, move.line, _mm(move.start), _mm(move.end), arc, move.axes)
         shares = [0.0, *(u for u, axis in arc.quadrants() if move.axes[axis] in self._lashed), 1.0]
-        for low, high in zip(shares, shares[1:], strict=False):
+        for low, high in itertools.pairwise(shares):
             yield from self._stretch(command, arc, low, high)
 
     def _stretch(self, command: Piece, arc: Arc, low: float, high: float) -> Iterator[Piece]:
@@ -202,7 +205,7 @@ class Follower:
                 offset[k] = self._shift(k, side)
                 contact[k] = self._contact(command, k, low, high, self.actual[k] + offset[k], side)
         bounds = sorted({low, high, *(u for u in contact.values() if low < u < high)})
-        for first, last in zip(bounds, bounds[1:], strict=False):
+        for first, last in itertools.pairwise(bounds):
             still = {k for k in self._lashed if contact.get(k, math.inf) > first}
             yield from self._part(command, arc, (first, last), still, offset)
 

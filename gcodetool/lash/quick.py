@@ -1,10 +1,10 @@
 """A short way for the commonest blocks: rapids, and feeds and arcs in G90 that turn no axis.
 
-It takes a block only where ``straight`` and ``curved`` would do no more than shift its targets, and then does just that; every
-other block goes the ordinary way.  A property test holds both ways to the same output and state.
+It takes a block only where ``straight`` and ``curved`` would do no more than shift its targets, and then does just
+that; every other block goes the ordinary way.  A property test holds both ways to the same output and state.
 
-Whether an axis turns is seen from floats: reading a decimal of up to 15 digits as a float keeps order and equality.  What is
-written is made from exact integers, as everywhere.
+Whether an axis turns is seen from floats: reading a decimal of up to 15 digits as a float keeps order and equality.
+What is written is made from exact integers, as everywhere.
 """
 
 from __future__ import annotations
@@ -38,7 +38,7 @@ class _Plan(NamedTuple):
 
 
 class Quick:
-    """The short way of one rewriting; ``ordinary`` takes a block that it leaves, ``is_open`` says whether it may be used."""
+    """The short way; ``ordinary`` takes a block that it leaves, ``is_open`` says whether it may be used."""
 
     def __init__(self, run: Running, ordinary: Callable[[Block], None], is_open: Callable[[], bool]) -> None:
         """Nothing is known of any block yet."""

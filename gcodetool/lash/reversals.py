@@ -1,12 +1,13 @@
 """Reversals of a program, per axis: where each axis changes its direction, on feeds, on rapids and inside arcs.
 
-A reversal is counted once the axis has come back from its last extreme by more than the ripple (``play.advance``); its place is
-that extreme.  Positions are in mm (degrees on A B C), in the coordinates of the program.  A direction that follows an unknown
-position counts as no reversal.
+A reversal is counted once the axis has come back from its last extreme by more than the ripple (``play.advance``);
+its place is that extreme.  Positions are in mm (degrees on A B C), in the coordinates of the program.  A direction
+that follows an unknown position counts as no reversal.
 """
 
 from __future__ import annotations
 
+import itertools
 from collections import Counter
 from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass, field
@@ -23,7 +24,7 @@ BINS = 12
 
 
 class Reversal(NamedTuple):
-    """One reversal: source line, axis letter, position in mm (degrees), new direction, feed or rapid, inside an arc or not."""
+    """One reversal: source line, axis, position in mm (degrees), new direction, on a rapid, inside an arc."""
 
     line: int
     axis: str
@@ -38,8 +39,9 @@ class AxisReversals:
     """Statistics of one axis.
 
     ``feed`` counts all reversals on feed motion, ``in_arcs`` those of them inside an arc, ``rapid`` those on rapids.
-    ``median_travel`` and ``shortest_travel`` are between neighbouring reversals, None with fewer than two.  ``suppressed`` is
-    what the ripple has passed over.  ``bins`` counts reversals along the axis from ``low`` to ``high``, in equal parts.
+    ``median_travel`` and ``shortest_travel`` are between neighbouring reversals, None with fewer than two.
+    ``suppressed`` is what the ripple has passed over.  ``bins`` counts reversals along the axis from ``low`` to
+    ``high``, in equal parts.
     """
 
     axis: str
@@ -133,7 +135,11 @@ def statistics(blocks: Iterable[Block], setup: Setup, ripple: Mapping[str, int],
     moved: set[str] = set()
     for item in Controller(setup).run(blocks):
         if isinstance(item, Move):
-            moved.update(letter for k, letter in enumerate(ORDER) if item.start[k] != item.end[k] or item.arc and k in item.axes)
+            moved.update(
+                letter
+                for k, letter in enumerate(ORDER)
+                if item.start[k] != item.end[k] or (item.arc and k in item.axes)
+            )
         for reversal in filtered.take(item):
             _count(counts[reversal.axis], reversal)
         for reversal in plain.take(item):
@@ -151,7 +157,7 @@ def _count(counts: _Counts, reversal: Reversal) -> None:
 
 
 def _summed(letter: str, counts: _Counts, most: int) -> AxisReversals:
-    travels = [abs(b - a) for a, b in zip(counts.places, counts.places[1:], strict=False)]
+    travels = [abs(b - a) for a, b in itertools.pairwise(counts.places)]
     low, high = (min(counts.places), max(counts.places)) if counts.places else (0.0, 0.0)
     busiest = sorted(counts.lines.items(), key=lambda item: (-item[1], item[0]))[:most]
     return AxisReversals(

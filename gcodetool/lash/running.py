@@ -44,7 +44,8 @@ class Settings:
 
     ``offsets`` and ``lengths`` are what the operator states of work offsets and tool lengths, quanta.
     ``hole_overshoot`` is how far past a hole to go so as to reach it from the datum side, quanta, 0 for not at all.
-    ``block_delete`` is None where the switch is not known, True where deletable blocks are skipped, False where they run.
+    ``block_delete`` is None where the switch is not known, True where deletable blocks are skipped, False where they
+    run.
     """
 
     start: Mapping[str, Start] = field(default_factory=dict)
@@ -209,7 +210,7 @@ class Running:
         return command.number(axis.letter) if command.has(axis.letter) else "0"
 
     def _take_up_feed(self, command: Command, state: ModalState) -> str | None:
-        """The F word a take-up needs: its own feed, or the block's if that is new; None where the feed in force serves."""
+        """The F word a take-up needs: its own feed, or the block's new one; None where the feed in force serves."""
         own = self.machine.take_up_feed
         if own is None:
             new = command.number("F").strip() if command.has("F") else self.feed
@@ -268,4 +269,4 @@ def _feed_mm(feed: str | None, state: ModalState) -> float:
     if not feed:
         return 0.0
     value, decimals = exact(feed)
-    return value / 10**decimals * (25.4 if state.units == "G20" else 1.0)
+    return float(value / 10**decimals) * (25.4 if state.units == "G20" else 1.0)

@@ -146,7 +146,7 @@ def _settled(
 
 
 def split_last_words(command: Command, pieces: list[str]) -> tuple[list[str], list[Word]]:
-    """Take out the M words that act after the motion (stops, program end), so that they can end the last line instead."""
+    """Take out the M words that act after the motion (stops, program end), so that they can end the last line."""
     indexes = [i for i in command.shape.m if code_word("M", command.pieces[i]) in ACTS_LAST]
     if not indexes:
         return pieces, []
@@ -207,7 +207,9 @@ def _feed_from_unknown(run: Running, command: Command, goal: Mapping[str, int], 
         return
     letter = unknown[0]
     word = letter + command.number(letter).strip()
-    reason = f"a feed motion of {letter} from " + ("an unknown side" if run.axes[letter].framed else "an unknown position")
+    reason = f"a feed motion of {letter} from " + (
+        "an unknown side" if run.axes[letter].framed else "an unknown position"
+    )
     raise command.refusal(word, reason, _SAY_START.format(letter.lower()))
 
 

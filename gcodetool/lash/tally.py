@@ -11,7 +11,7 @@ _WORST = 5
 
 
 class TakeUp(NamedTuple):
-    """One take-up block: seconds of standstill at its feed (0 where the feed is not known), line, axes, in the cut or not."""
+    """One take-up block: seconds that it takes (0 where its feed is not known), line, axes, in the cut or not."""
 
     seconds: float
     line: int

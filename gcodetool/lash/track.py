@@ -12,10 +12,10 @@ _ZERO = 1e-9
 
 
 class Track:
-    """Position, farthest place and side of an axis in program units, and its shift in last digits of ``places`` decimals.
+    """Position, farthest place and side of an axis in program units, and its shift in last digits.
 
-    ``side`` is 2 on an axis without lash, whose every target passes, and 0 where a turn cannot be judged.  ``last`` is the
-    last target word that went the short way, "" where none has since the ordinary way was used.
+    ``side`` is 2 on an axis without lash, whose every target passes, and 0 where a turn cannot be judged.  ``last``
+    is the last target word that went the short way, "" where none has since the ordinary way was used.
     """
 
     __slots__ = ("at", "axis", "far", "last", "placed", "places", "ripple", "side", "step", "steps")
@@ -68,7 +68,7 @@ class Track:
 
 
 def in_one_quadrant(u: tuple[float, float], v: tuple[float, float], counter: bool) -> tuple[int, int] | None:
-    """The way of each plane axis on an arc from ``u`` to ``v`` about the origin; None unless it lies in one quadrant."""
+    """The way of each plane axis on an arc from ``u`` to ``v`` about the origin; None unless in one quadrant."""
     signs = []
     for k in (0, 1):
         begin = 0.0 if abs(u[k]) < _ZERO else u[k]
@@ -83,7 +83,7 @@ def in_one_quadrant(u: tuple[float, float], v: tuple[float, float], counter: boo
 
 
 def shifted_text(text: str, step: int, places: int) -> str:
-    """A number text with ``step`` last digits of ``places`` decimals more, in its own style and with all its decimals."""
+    """A number text with ``step`` last digits of ``places`` decimals more, in its own style, all decimals kept."""
     head, _, tail = text.partition(".")
     decimals = len(tail)
     if decimals <= places:

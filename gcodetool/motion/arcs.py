@@ -1,7 +1,7 @@
 """Circle geometry of G2 and G3: centre, sweep, quadrant points.
 
-Plane coordinates ``(p, q)`` are right-handed seen from the positive end of the normal axis: (X, Y) in G17, (Z, X) in G18,
-(Y, Z) in G19 (NISTIR 6556, 3.5.3).  Lengths in mm, angles in radians, counter-clockwise positive.
+Plane coordinates ``(p, q)`` are right-handed seen from the positive end of the normal axis: (X, Y) in G17, (Z, X) in
+G18, (Y, Z) in G19 (NISTIR 6556, 3.5.3).  Lengths in mm, angles in radians, counter-clockwise positive.
 """
 
 from __future__ import annotations
@@ -66,8 +66,8 @@ class Arc:
 def from_centre(start: Point, end: Point, centre: Point, clockwise: bool, closed: bool, turns: int = 1) -> Arc:
     """Arc about a given centre; ``closed`` says that the written end is the written start (a full circle).
 
-    ``turns`` is the P word: 1 for at most one full circle, 2 for one turn more.  A full circle of radius 0, which posts do
-    write, is an arc without sweep; any other arc of radius 0 raises ArcError.
+    ``turns`` is the P word: 1 for at most one full circle, 2 for one turn more.  A full circle of radius 0, which
+    posts do write, is an arc without sweep; any other arc of radius 0 raises ArcError.
     """
     ux, uy = start[0] - centre[0], start[1] - centre[1]
     vx, vy = end[0] - centre[0], end[1] - centre[1]
@@ -90,8 +90,8 @@ def from_centre(start: Point, end: Point, centre: Point, clockwise: bool, closed
 def from_radius(start: Point, end: Point, radius: float, clockwise: bool, turns: int = 1) -> Arc:
     """Arc of a given radius; a negative radius asks for the longer way round (NISTIR 6556, 3.5.3.1).
 
-    Where the chord is longer than the diameter by rounding only, the centre is the middle of the chord.  Raises ArcError
-    for a chord that is clearly too long, a zero chord, a zero radius.
+    Where the chord is longer than the diameter by rounding only, the centre is the middle of the chord.  Raises
+    ArcError for a chord that is clearly too long, a zero chord, a zero radius.
     """
     dx, dy = end[0] - start[0], end[1] - start[1]
     chord = math.hypot(dx, dy)

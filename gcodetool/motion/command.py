@@ -1,7 +1,7 @@
 """One block to one command: what the controller is asked to do, with nothing assumed about where the axes are.
 
-This is the only reader of meaning.  The rewriter, the proof and the statistics all start from its commands, so that a word
-cannot mean one thing to one of them and another thing to the next.
+This is the only reader of meaning.  The rewriter, the proof and the statistics all start from its commands, so that a
+word cannot mean one thing to one of them and another thing to the next.
 """
 
 from __future__ import annotations
@@ -131,17 +131,23 @@ def _check(command: Command) -> None:
     _check_letters(command)
     if len(g.here & TAKES_AXIS_WORDS) > 1:
         both = " ".join(sorted(g.here & TAKES_AXIS_WORDS))
-        raise command.refusal(both, "two words that both want the numbers of the block", "Put them on lines of their own")
+        raise command.refusal(
+            both, "two words that both want the numbers of the block", "Put them on lines of their own"
+        )
     if shape.axes and kind is Kind.FRAME and g.motion not in ("", "G0", "G1", "G80"):
         both = f"{g.motion} {' '.join(sorted(g.here))}"
-        raise command.refusal(both, "two words that both want the numbers of the block", "Put them on lines of their own")
+        raise command.refusal(
+            both, "two words that both want the numbers of the block", "Put them on lines of their own"
+        )
     if shape.axes and kind is Kind.NONE and not (g.here & TAKES_AXIS_WORDS) and g.length != "G43.1":
         letter = shape.axes[0][0]
         reason = f"an axis word with no motion in force ({command.after.motion or 'none'})"
         raise command.refusal(letter + command.number(letter).strip(), reason, "Write G0 or G1 on the line")
     if kind not in (Kind.NONE, Kind.HOME) and command.after.units is None and command.shape.axes:
         reason = "motion before the program has said whether it is in mm or inches"
-        raise command.refusal(_first_word(command), reason, "State it with --units mm or --units in, or in the machine sheet")
+        raise command.refusal(
+            _first_word(command), reason, "State it with --units mm or --units in, or in the machine sheet"
+        )
 
 
 def _check_letters(command: Command) -> None:
@@ -199,4 +205,4 @@ def turns_of(command: Command) -> int:
     value, decimals = exact(command.number("P"))
     if value % 10**decimals or not 1 <= value // 10**decimals <= 10_000:
         raise command.refusal("P" + command.number("P").strip(), "turns are whole numbers from 1", "Mend the P word")
-    return value // 10**decimals
+    return int(value // 10**decimals)

@@ -1,7 +1,7 @@
 """A concrete controller: a program and a setup to moves in machine coordinates.
 
-It knows every position, because the setup states them; the rewriter, which must not, has its own bookkeeping.  The proof, the
-statistics and the audit run on this.
+It knows every position, because the setup states them; the rewriter, which must not, has its own bookkeeping.  The
+proof, the statistics and the audit run on this.
 """
 
 from __future__ import annotations
@@ -97,7 +97,7 @@ class Controller:
 
     def _tool_change(self) -> Iterator[Happening]:
         if self.setup.tool_change is not None:
-            self.at.update({letter: value for letter, value in self.setup.tool_change.items()})
+            self.at.update(self.setup.tool_change)
         self.unplaced.update(ORDER)
         yield Event("tool change", self._line, self._position(), ORDER)
 
@@ -135,11 +135,8 @@ class Controller:
         end = {letter: value - self.frames.origin(letter) for letter, value in goal.items()}
         move = arc_move(command, program, end)
         first, second, _ = PLANE_AXES[command.after.plane]
-        centre = tuple(
-            value + self.frames.origin(letter) / QUANTA_PER_MM
-            for value, letter in zip(move.arc.centre, (first, second), strict=True)
-        )
-        arc = replace(move.arc, centre=centre)
+        origin = self.frames.origin(first) / QUANTA_PER_MM, self.frames.origin(second) / QUANTA_PER_MM
+        arc = replace(move.arc, centre=(move.arc.centre[0] + origin[0], move.arc.centre[1] + origin[1]))
         if arc.sweep or goal:
             yield self._go(False, goal, arc, (ORDER.index(first), ORDER.index(second)))
 

@@ -1,8 +1,9 @@
 """Drilling and boring cycles: their sticky words, and the moves each stands for (NISTIR 6556, 3.5.16).
 
-The normal axis of the plane is called Z here and the plane axes X and Y, whatever the plane.  Lengths in quanta.  Moves are
-given in the program frame; a move names only the axes that it is about.  A step is ``rapid``, ``in`` (a feed that cuts),
-``out`` (a feed that comes back), ``peck`` (a feed to a depth on the way) or ``back`` (a rapid between pecks).
+The normal axis of the plane is called Z here and the plane axes X and Y, whatever the plane.  Lengths in quanta.
+Moves are given in the program frame; a move names only the axes that it is about.  A step is ``rapid``, ``in`` (a
+feed that cuts), ``out`` (a feed that comes back), ``peck`` (a feed to a depth on the way) or ``back`` (a rapid
+between pecks).
 """
 
 from __future__ import annotations
@@ -54,8 +55,8 @@ class Sticky:
 class Cycle:
     """One cycle block with everything it needs: where, how deep, how often.
 
-    ``steps`` are the plane axis words as written: targets, or increments where ``absolute`` is False.  ``bottom``, ``level``
-    (R) and ``top`` (K of G87) are targets of the normal axis; ``clear`` is the level it returns to.
+    ``steps`` are the plane axis words as written: targets, or increments where ``absolute`` is False.  ``bottom``,
+    ``level`` (R) and ``top`` (K of G87) are targets of the normal axis; ``clear`` is the level it returns to.
     """
 
     word: str
@@ -81,11 +82,15 @@ def read_cycle(command: Command, sticky: Sticky, height: int) -> Cycle:
     level, depth = sticky.quanta("R"), sticky.quanta(plane[2])
     if level is None or depth is None:
         missing = "R" if level is None else plane[2]
-        raise command.refusal(command.after.motion, f"the cycle has no {missing}", "State it in the first block of the cycle")
+        raise command.refusal(
+            command.after.motion, f"the cycle has no {missing}", "State it in the first block of the cycle"
+        )
     level = level if absolute else height + level
     bottom = depth if absolute else level + depth
     if level < bottom:
-        raise command.refusal(command.block.text.strip()[:40], "R lies below the bottom of the hole", "Mend R or the depth")
+        raise command.refusal(
+            command.block.text.strip()[:40], "R lies below the bottom of the hole", "Mend R or the depth"
+        )
     top = _top(command, sticky, bottom, absolute)
     return Cycle(
         word=command.after.motion,
@@ -119,7 +124,9 @@ def _peck(command: Command, sticky: Sticky) -> int:
         return 0
     peck = sticky.quanta("Q")
     if peck is None or peck <= 0:
-        raise command.refusal(command.after.motion, "a pecking cycle needs Q above zero", "State Q, the depth of one peck")
+        raise command.refusal(
+            command.after.motion, "a pecking cycle needs Q above zero", "State Q, the depth of one peck"
+        )
     return peck
 
 
@@ -131,7 +138,7 @@ def _repeats(command: Command) -> int:
     if value % 10**decimals or not 1 <= value // 10**decimals <= MOST_REPEATS:
         word = letter + command.number(letter).strip()
         raise command.refusal(word, "repeats are whole numbers from 1", "Mend the number of repeats")
-    return value // 10**decimals
+    return int(value // 10**decimals)
 
 
 def cycle_steps(cycle: Cycle, start: Mapping[str, int]) -> Iterator[Step]:
@@ -182,4 +189,3 @@ def _back_bore(cycle: Cycle, place: Mapping[str, int]) -> Iterator[Step]:
     yield "rapid", dict(aside)
     yield "rapid", {normal: cycle.clear}
     yield "rapid", dict(place)
-

@@ -1,8 +1,8 @@
 """The code table: what each G and M word is, as data.  The interpreter, the refusals and the docs page all read it.
 
-Groups follow NISTIR 6556, table 4, with the words of ISO 6983-1 that real programs carry.  A code with a refusal cannot be
-rewritten safely; the refusal says why and the way out.  A G code that is not in the table is refused as unknown; an M
-code that is not in the table passes with a caution.
+Groups follow NISTIR 6556, table 4, with the words of ISO 6983-1 that real programs carry.  A code with a refusal
+cannot be rewritten safely; the refusal says why and the way out.  A G code that is not in the table is refused as
+unknown; an M code that is not in the table passes with a caution.
 """
 
 from __future__ import annotations
@@ -77,11 +77,19 @@ def _codes() -> list[Code]:
         Code("G97", "spindle", "constant spindle speed: passes"),
     ]
     table += [
-        Code("G92", "one line", "sets the position: each value gets the shift of its axis, so that zero stays at the tool"),
+        Code(
+            "G92",
+            "one line",
+            "sets the position: each value gets the shift of its axis, so that zero stays at the tool",
+        ),
         Code("G92.1", "one line", "cancels G92: position unknown unless what it cancels is known"),
         Code("G92.2", "one line", "suspends G92: as G92.1"),
         Code("G92.3", "one line", "restores G92: position unknown unless what it restores is known"),
-        Code("G10", "one line", "L2 sets an offset, L20 as G92, L1 a tool length; positions follow where both values are known"),
+        Code(
+            "G10",
+            "one line",
+            "L2 sets an offset, L20 as G92, L1 a tool length; positions follow where both values are known",
+        ),
         Code("G52", "one line", "local shift of the frame: positions follow"),
     ]
     kept = "kept as a cycle: X and Y as in a rapid, depth and R shifted so that the bottom is exact"
@@ -89,13 +97,13 @@ def _codes() -> list[Code]:
     probe = "probe: target unshifted; side known after it, position unknown until G92 or G10 L20"
     table += [Code(w, "motion", probe) for w in PROBES]
     offsets = [f"G{n}" for n in range(54, 60)] + ["G59.1", "G59.2", "G59.3"]
-    table += [Code(w, "offset", "work offset: positions unknown after a change of it") for w in offsets]
-    return table + _refused()
+    frame = "work offset: positions unknown after a change of it, unless both offsets are known"
+    return [*table, *(Code(word, "offset", frame) for word in offsets), *_refused()]
 
 
 def _refused() -> list[Code]:
     comp = "cutter compensation bends the path inside the controller, so its reversals are not in the program"
-    table = [
+    return [
         Code("G41", "cutter", "refused", comp, "Let the CAM system write the compensated path (wear offset zero)"),
         Code("G42", "cutter", "refused", comp, "Let the CAM system write the compensated path (wear offset zero)"),
         Code("G16", "polar", "refused", "polar coordinates are not read", _OUT_CAM),
@@ -104,10 +112,13 @@ def _refused() -> list[Code]:
         Code("G68", "rotation", "refused", "rotation mixes the axes inside the controller", _OUT_CAM),
         Code("G65", "one line", "refused", "a macro call can move any axis", _OUT_EXPAND),
         Code("G66", "macro", "refused", "a macro call can move any axis", _OUT_EXPAND),
-        Code("G28.1", "one line", "refused", "it stores a home point that would be off by the lash", "Store it by hand"),
-        Code("G30.1", "one line", "refused", "it stores a home point that would be off by the lash", "Store it by hand"),
+        Code(
+            "G28.1", "one line", "refused", "it stores a home point that would be off by the lash", "Store it by hand"
+        ),
+        Code(
+            "G30.1", "one line", "refused", "it stores a home point that would be off by the lash", "Store it by hand"
+        ),
     ]
-    return table
 
 
 G_CODES = {code.word: code for code in _codes()}

@@ -1,7 +1,7 @@
 """Work offsets, set positions, local shifts and tool lengths of a controller: from program to machine coordinates.
 
-Program position = machine position - origin; the origin of an axis is the sum of the active work offset, the G92 offset,
-the G52 shift and, for Z, the tool length (NISTIR 6556, 3.5.5, 3.5.10, 3.5.14, 3.5.17).  All in quanta.
+Program position = machine position - origin; the origin of an axis is the sum of the active work offset, the G92
+offset, the G52 shift and, for Z, the tool length (NISTIR 6556, 3.5.5, 3.5.10, 3.5.14, 3.5.17).  All in quanta.
 """
 
 from __future__ import annotations
@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 
 from gcodetool.motion.command import Command
-from gcodetool.motion.moves import ORDER, Setup
+from gcodetool.motion.moves import Setup
 from gcodetool.program.numbers import exact
 
 OFFSET_WORDS = ("G54", "G55", "G56", "G57", "G58", "G59", "G59.1", "G59.2", "G59.3")
@@ -38,7 +38,9 @@ class Frames:
         here = command.g.here
         if "G92" in here:
             for letter, _ in command.shape.axes:
-                self.set[letter] = self.set.get(letter, 0) + machine[letter] - self.origin(letter) - command.quanta(letter)
+                self.set[letter] = (
+                    self.set.get(letter, 0) + machine[letter] - self.origin(letter) - command.quanta(letter)
+                )
             self.saved = dict(self.set)
         elif "G92.1" in here or "G92.2" in here:
             self.saved = {} if "G92.1" in here else self.saved
@@ -82,7 +84,7 @@ def whole(command: Command, letter: str) -> int:
     if value % 10**decimals or value < 0:
         word = letter + command.number(letter).strip()
         raise command.refusal(word, "this must be a whole number", "Mend the word")
-    return value // 10**decimals
+    return int(value // 10**decimals)
 
 
 def offset_word(command: Command, number: int) -> str:

@@ -28,8 +28,8 @@ _SAME = {"G70": "G20", "G71": "G21"}
 class ModalState:
     """What holds from block to block.
 
-    ``motion`` "" is the controller's wake-up mode (a straight line of unknown speed); ``units`` None and ``offset`` None
-    mean that the program has not said yet.
+    ``motion`` "" is the controller's wake-up mode (a straight line of unknown speed); ``units`` None and ``offset``
+    None mean that the program has not said yet.
     """
 
     motion: str = ""

@@ -1,7 +1,7 @@
 """Records of what a controller does: moves in machine coordinates, and events between them.
 
-A position is a tuple of six integers in quanta (1e-10 mm or degree) in the order X Y Z A B C.  Programs are written as if the
-tool moved over a fixed part (ISO 841), so ``+`` is the tool's direction.
+A position is a tuple of six integers in quanta (1e-10 mm or degree) in the order X Y Z A B C.  Programs are written
+as if the tool moved over a fixed part (ISO 841), so ``+`` is the tool's direction.
 """
 
 from __future__ import annotations
@@ -33,9 +33,9 @@ class Context(NamedTuple):
 class Move(NamedTuple):
     """One motion: ``rapid`` or feed, source line, both ends, the arc in machine coordinates (mm) for an arc.
 
-    ``axes`` are the indexes of the first and second plane axis of the arc.  ``unplaced`` are the letters whose start is not
-    known from the program, so that their direction is not either.  ``hole`` is what a move is to the
-    hole of a cycle: "in", "out", "peck", "back", or "" where it is none of them (see ``cycles``).
+    ``axes`` are the indexes of the first and second plane axis of the arc.  ``unplaced`` are the letters whose start
+    is not known from the program, so that their direction is not either.  ``hole`` is what a move is to the hole of a
+    cycle: "in", "out", "peck", "back", or "" where it is none of them (see ``cycles``).
     """
 
     rapid: bool
@@ -50,7 +50,7 @@ class Move(NamedTuple):
 
 
 class Event(NamedTuple):
-    """Something that can move the sides: ``what`` is "tool change", "home", "probe" or "stop"; ``letters`` the axes it is about."""
+    """Something that can move the sides: "tool change", "home", "probe" or "stop"; ``letters`` are its axes."""
 
     what: str
     line: int
@@ -62,9 +62,9 @@ class Event(NamedTuple):
 class Setup:
     """A concrete machine to run a program on; quanta by axis letter, 0 where nothing is said.
 
-    ``offsets`` by work offset word, ``lengths`` by H number, ``homes`` by G28 and G30, ``tool_change`` the place M6 goes to
-    (None: it does not move), ``contacts`` where each probe in turn stops (axis letter to machine position; the middle of its
-    travel where none is given).  ``unplaced`` are the letters whose start position is not known.
+    ``offsets`` by work offset word, ``lengths`` by H number, ``homes`` by G28 and G30, ``tool_change`` the place M6
+    goes to (None: it does not move), ``contacts`` where each probe in turn stops (axis letter to machine position;
+    the middle of its travel where none is given).  ``unplaced`` are the letters whose start position is not known.
     """
 
     start: Mapping[str, int] = field(default_factory=dict)

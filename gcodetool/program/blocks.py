@@ -1,8 +1,8 @@
-"""Source lines to blocks and back; every byte is kept, line ends included.
+r"""Source lines to blocks and back; every byte is kept, line ends included.
 
-A *block* is one line of the program: its number (counted from 1), its text, and its line end as found (``\\r\\n``, ``\\n``,
-``\\r`` or, on a last line, nothing).  Text is latin-1, which maps bytes to characters one to one, so odd bytes in
-comments come out as they went in.
+A *block* is one line of the program: its number (counted from 1), its text, and its line end as found (``\r\n``,
+``\n``, ``\r`` or, on a last line, nothing).  Text is latin-1, which maps bytes to characters one to one, so odd
+bytes in comments come out as they went in.
 """
 
 from __future__ import annotations

@@ -1,7 +1,7 @@
 """Number text to exact integers and back; nothing here ever passes through a float.
 
-A length is held as an integer count of *quanta*: one quantum is 1e-10 mm (1e-10 degree on a rotary axis).  Nine decimals
-of an inch and ten of a millimetre are whole quanta, so sums of written words are exact whatever the units.
+A length is held as an integer count of *quanta*: one quantum is 1e-10 mm (1e-10 degree on a rotary axis).  Nine
+decimals of an inch and ten of a millimetre are whole quanta, so sums of written words are exact whatever the units.
 """
 
 from __future__ import annotations

@@ -17,7 +17,7 @@ Word = tuple[str, str]
 
 
 class Look(NamedTuple):
-    """How a block is written: what stands between words, lower case or not, deletable or not, with a line check or not."""
+    """How a block is written: what stands between words, lower case, deletable, with a line check."""
 
     between: str = " "
     lower: bool = False
@@ -28,10 +28,7 @@ class Look(NamedTuple):
 def look_of(pieces: Sequence[str], lower: bool, otherwise: str = " ") -> Look:
     """The look of a split block; ``otherwise`` is the blank to use where a lone word shows none."""
     inner = pieces[3:-1:3]
-    if inner:
-        between = " " if any(gap[:1] in (" ", "\t") for gap in inner) else ""
-    else:
-        between = otherwise
+    between = otherwise if not inner else " " if any(gap[:1] in (" ", "\t") for gap in inner) else ""
     return Look(between, lower, is_deletable(list(pieces)), "*" in pieces[-1])
 
 
@@ -44,7 +41,7 @@ def new_line(words: Iterable[Word], look: Look) -> str:
 
 
 def with_check_sum(text: str) -> str:
-    """The text with its line check ``*nn`` made anew: exclusive or of all characters before it (common practice, no source)."""
+    """The text with its line check ``*nn`` made anew, or with one added."""
     body = _CHECK.sub("", text)
     return f"{body}*{check_sum(body)}"
 

@@ -1,7 +1,8 @@
 """One block to words and back; knows letters and numbers, no meaning.
 
-``split`` cuts a block into *pieces*: ``[gap, letter, number, gap, letter, number, ..., gap]``.  A gap is everything that is
-not a word: blanks, comments in ( ) or after ;, the block delete slash, ``%``.  Joining the pieces gives the text back.
+``split`` cuts a block into *pieces*: ``[gap, letter, number, gap, letter, number, ..., gap]``.  A gap is everything
+that is not a word: blanks, comments in ( ) or after ;, the block delete slash, ``%``.  Joining the pieces gives the
+text back.
 """
 
 from __future__ import annotations
@@ -25,10 +26,10 @@ class NotWords(ValueError):
 class Shape:
     """Where the words of a block stand, shared by all blocks with the same letters in the same order.
 
-    ``at`` gives for each upper-case letter the index of its number among the pieces (the last one where it is repeated),
-    ``axes`` the same for the axis letters of ISO 841 in the order X Y Z A B C, ``g`` and ``m`` all indexes of G and M
-    numbers, ``twice`` a letter other than G and M that is repeated, or "".  ``plain`` blocks hold N, G, F and axis words
-    only, ``lower`` ones are written in lower case.
+    ``at`` gives for each upper-case letter the index of its number among the pieces (the last one where it is
+    repeated), ``axes`` the same for the axis letters of ISO 841 in the order X Y Z A B C, ``g`` and ``m`` all indexes
+    of G and M numbers, ``twice`` a letter other than G and M that is repeated, or "".  ``plain`` blocks hold N, G, F
+    and axis words only, ``lower`` ones are written in lower case.
     """
 
     at: dict[str, int]
@@ -126,7 +127,7 @@ def _gap_end(text: str, place: int) -> int:
     check = _CHECK.match(text, place)
     if check:
         return check.end()
-    if char.isspace() or char in "\x00\x1a\x7f\xef\xbb\xbf" and not text[:place].strip("\xef\xbb\xbf\x00\x1a\x7f "):
+    if char.isspace() or (char in "\x00\x1a\x7f\xef\xbb\xbf" and not text[:place].strip("\xef\xbb\xbf\x00\x1a\x7f ")):
         # tape leaders, a stray end-of-file mark, a byte order mark: only ever at the start of a line
         return place + 1
     odd = _ODD.match(text, place)
@@ -159,7 +160,7 @@ def is_deletable(pieces: list[str]) -> bool:
 
 
 def check_sum(text: str) -> int:
-    """Exclusive or of all characters before ``*``: the line check of simple serial links (common practice, no source)."""
+    """Exclusive or of all characters before ``*``, the check of simple serial links (common practice, no source)."""
     total = 0
     for byte in text.encode("latin-1"):
         total ^= byte

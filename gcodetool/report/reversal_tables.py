@@ -9,7 +9,8 @@ if TYPE_CHECKING:
     from gcodetool.lash.reversals import AxisReversals, Reversal
 
 COLUMNS = (
-    "axis", "on feed", "in arcs", "on rapids", "median travel", "shortest", "passed over", "take-ups", "range", "histogram",
+    "axis", "on feed", "in arcs", "on rapids", "median travel", "shortest", "passed over", "take-ups",
+    "range", "histogram",
 )  # fmt: skip
 LIST_COLUMNS = ("line", "axis", "position", "direction", "motion")
 _BARS = " .:-=+*#%@"

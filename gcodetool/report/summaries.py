@@ -42,7 +42,9 @@ def compensation_lines(tally: Tally, machine: Machine, verdict: Verdict | None) 
         lines.append(f"longest stops in the cut: {places}")
     lines += [f"stops in the cut: line {made.line}: {made.axes}{_seconds(made.seconds)}" for made in tally.stops]
     if tally.seconds:
-        lines.append(f"time added: about {tally.seconds:.1f} s, take-ups from stop to stop at the feeds and accelerations known")
+        lines.append(
+            f"time added: about {tally.seconds:.1f} s, take-ups from stop to stop at the feeds and accelerations known"
+        )
     if tally.approaches:
         lines.append(f"holes reached anew from the datum side: {tally.approaches} axis moves")
     lines.append(
@@ -63,15 +65,14 @@ def proof_lines(verdict: Verdict) -> list[str]:
     if verdict.broken:
         return [f"proof: the two programs do not move alike: {verdict.broken}"]
     before, after = verdict.uncompensated, verdict.feed
-    lines = [
+    return [
         f"largest error before: {before.distance:.4f} mm at line {before.lines[0]} ({_by_axis(before.by_axis)})",
         f"largest error after:  {after.distance:.4f} mm"
         + (f" at line {after.lines[0]} of the original, {after.lines[1]} of the result" if after.distance else "")
         + f" ({_by_axis(after.by_axis)}); allowed {verdict.tolerance:.4f}",
         f"largest stray of a rapid: {verdict.stray.distance:.3f} mm at line {verdict.stray.lines[1]} of the result",
-        f"proof: {'holds' if verdict.holds else 'FAILS'}, from {verdict.corners} start sides on {verdict.runs} machines",
+        f"proof: {'holds' if verdict.holds else 'FAILS'}, {verdict.corners} start sides, {verdict.runs} machines",
     ]
-    return lines
 
 
 def _by_axis(values: Sequence[float]) -> str:
