@@ -67,12 +67,15 @@ def command(
     length: LengthOption = None,
     block_delete: BlockDeleteOption = None,
     stop_at: Annotated[
-        str, typer.Option("--stop-at", metavar="SEVERITY", help="Exit code 1 from this severity on: note, caution, danger.")
+        str,
+        typer.Option("--stop-at", metavar="SEVERITY", help="Exit code 1 from here on: note, caution, danger."),
     ] = "danger",
     sizes: Annotated[int, typer.Option("--sizes", metavar="N", min=0, help="Features shown, worst first.")] = 20,
     listed: Annotated[bool, typer.Option("--list", help="Print every feed motion on a line of its own.")] = False,
     as_json: Annotated[bool, typer.Option("--json", help="Print one JSON object.")] = False,
-    materials: Annotated[bool, typer.Option("--materials", help="Print the known materials as tables to edit.")] = False,
+    materials: Annotated[
+        bool, typer.Option("--materials", help="Print the known materials, to edit.")
+    ] = False,
     name: NameOption = None,
 ) -> None:
     """Tell where the cutter cuts climb or conventional, what the part will measure, and what could go wrong.
@@ -138,7 +141,9 @@ def _show(found: Audit, sizes: int, tolerance: float) -> None:
         show("")
     if found.features and sizes:
         chosen = found.features[:sizes]
-        title = f"What the part will measure, mm, estimate; {len(chosen)} of {len(found.features)} features, worst first"
+        title = (
+            f"What the part will measure, mm, estimate; {len(chosen)} of {len(found.features)} shapes, worst first"
+        )
         show_table(title, tables.SIZE_COLUMNS, tables.size_rows(chosen, 0.2 * tolerance))
         show("")
     if found.envelope:

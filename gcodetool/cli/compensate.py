@@ -183,7 +183,8 @@ def _passed_over(source: Source, machine: Machine) -> str:
     ripple = {letter: decimal_to_quanta(axis.ripple) for letter, axis in machine.axes.items() if axis.ripple}
     setup = Setup(units=machine.units, unplaced=ORDER)
     saved = {a.axis: a.suppressed for a in statistics(blocks(source.lines()), setup, ripple) if a.axis in ripple}
-    return "ripple: take-ups saved: " + ", ".join(f"{letter} {count}" for letter, count in saved.items())
+    counts = ", ".join(f"{letter} {count}" for letter, count in saved.items())
+    return f"ripple: take-ups saved: {counts}; where it passed over one, the errors above leave out what it allows"
 
 
 def _live(source: Source, machine: Machine, settings: Settings, again: bool) -> Tally:

@@ -18,7 +18,7 @@ from gcodetool.cli.options import (
     UnitsOption,
     machine_from,
 )
-from gcodetool.cli.stated import LengthOption, OffsetOption, StartOption, settings_from
+from gcodetool.cli.stated import HoleOvershootOption, LengthOption, OffsetOption, StartOption, settings_from
 from gcodetool.cli.streams import open_source
 from gcodetool.cli.tables import show
 from gcodetool.cli.terminal import watched
@@ -38,6 +38,7 @@ def command(
     start: StartOption = None,
     offset: OffsetOption = None,
     length: LengthOption = None,
+    hole_overshoot: HoleOvershootOption = None,
     tolerance: Annotated[
         float | None, typer.Option("--tolerance", metavar="MM", min=0.0, help="Largest error that is allowed; 0.0006.")
     ] = None,
@@ -53,7 +54,7 @@ def command(
     sheet = machine_from(
         machine, lash=lash, datum=datum, ripple=ripple, units=units, settle_margin=settle_margin, lash_needed=True
     )
-    settings = settings_from(start, offset, length, None, 0)
+    settings = settings_from(start, offset, length, None, 0, hole_overshoot)
     with open_source(original, name) as first, open_source(result, name) as second:
         verdict = verify(
             lambda: blocks(watched(first.lines(), first.size, "proving")),

@@ -114,7 +114,7 @@ def _limit_findings(
         yield findings.finding(304, line(hit.move), f"the cutter comes {hit.value:.3f} mm into {hit.name}")
     fast = limits.too_fast(path, machine)
     if fast:
-        share = f"{100 * fast[0].value:.0f} % of its largest feed (worst of {len(fast)} moves)"
+        share = f"{100 * fast[0].value:.0f} % of its largest feed{findings.worst_of(len(fast))}"
         text = f"axis {fast[0].name} is asked for {share}"
         yield findings.finding(305, line(fast[0].move), text, count=len(fast))
     for hit in limits.speeds(path, job):

@@ -9,7 +9,7 @@ the same lines and arcs it is bounded piece by piece instead, which is quicker a
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -43,6 +43,19 @@ class Gap:
         return Gap(wide.distance, tuple(map(max, self.by_axis, other.by_axis)), wide.lines)
 
 
+@dataclass(frozen=True, slots=True)
+class Ease:
+    """What is allowed where: on a source line of the first path, on these axes, up to ``amount`` (X Y Z A B C)."""
+
+    amount: tuple[float, ...]
+    lines: Mapping[int, frozenset[int]]
+
+    def on(self, line: int) -> tuple[float, ...]:
+        """What is allowed on a line, by axis."""
+        axes = self.lines.get(line, frozenset())
+        return tuple(value if k in axes else 0.0 for k, value in enumerate(self.amount))
+
+
 def is_still(piece: Piece) -> bool:
     """True for a piece on which the tool does not move."""
     if piece.arc is not None and abs(piece.arc.sweep) * piece.arc.start_radius > STILL:
@@ -50,10 +63,15 @@ def is_still(piece: Piece) -> bool:
     return all(abs(a - b) <= STILL for a, b in zip(piece.start, piece.end, strict=True))
 
 
-def gap(first: Sequence[Piece], second: Sequence[Piece]) -> Gap:
-    """The widest place between two feed paths, either of which may be empty (the tool then stands at one point)."""
+def gap(first: Sequence[Piece], second: Sequence[Piece], ease: Ease | None = None) -> Gap:
+    """The widest place between two feed paths, either of which may be empty (the tool then stands at one point).
+
+    What ``ease`` allows is taken off before it is measured.
+    """
     if not first or not second:
         return _ends_only(first, second)
+    if ease is not None and any(piece.line in ease.lines for piece in first):
+        return by_window(first, second, ease=ease)
     found = _line_by_line(first, second)
     if found is None:
         found = _walk(first, second)
@@ -225,8 +243,10 @@ def _shares(piece: Piece, chord_error: float) -> list[float]:
     return [k / count for k in range(1, count)]
 
 
-def by_window(first: Sequence[Piece], second: Sequence[Piece], chord_error: float = CHORD_ERROR) -> Gap:
-    """The windowed Hausdorff distance of two paths."""
+def by_window(
+    first: Sequence[Piece], second: Sequence[Piece], chord_error: float = CHORD_ERROR, ease: Ease | None = None
+) -> Gap:
+    """The windowed Hausdorff distance of two paths, less what ``ease`` allows."""
     one, one_owner = polyline(first, chord_error)
     two, two_owner = polyline(second, chord_error)
     found = Gap()
@@ -237,12 +257,23 @@ def by_window(first: Sequence[Piece], second: Sequence[Piece], chord_error: floa
         if not swap:
             away = np.where(skipped, 0.0, away)
             vector = np.where(skipped[:, None], 0.0, vector)
+        if ease is not None:
+            owners = one_owner if swap else one_owner[np.minimum(at + 1, len(one_owner) - 1)]
+            vector = _eased(vector, [first[k].line for k in owners], ease)
+            away = np.sqrt((vector**2).sum(axis=1))
         worst = int(away.argmax())
         here, there = (one_owner, two_owner) if swap else (two_owner, one_owner)
         mine, other = int(here[worst]), int(there[min(int(at[worst]) + 1, len(there) - 1)])
         lines = (first[mine].line, second[other].line) if swap else (first[other].line, second[mine].line)
         found = found.wider(Gap(float(away[worst]), tuple(np.abs(vector).max(axis=0).tolist()), lines))
     return found
+
+
+def _eased(vector: Floats, lines: Sequence[int], ease: Ease) -> Floats:
+    """Vectors with what is allowed on their lines taken off, axis by axis."""
+    allowed = np.array([ease.on(line) for line in lines])
+    eased: Floats = np.sign(vector) * np.maximum(np.abs(vector) - allowed, 0.0)
+    return eased
 
 
 def _settles(piece: Piece, intended: Sequence[Piece]) -> bool:

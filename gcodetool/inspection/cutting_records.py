@@ -105,14 +105,15 @@ class Cutters:
 class Path:
     """All moves of a program as columns; row k is one move.
 
-    ``start`` and ``end`` are (n, 3) positions of the tip.  ``plane`` is 0 for a line, else 1, 2, 3 for an arc in XY, ZX,
-    YZ, with ``centre`` (n, 2), ``radius``, ``angle`` (start) and ``sweep`` in that plane.  ``feed`` in mm/min and ``speed``
-    in rpm are nan where never said; ``sense`` is +1 for M3, -1 for M4, 0 while the spindle stands.  ``tool`` is an index
-    into the cutters of the job.  ``chain`` counts contours: it grows at every rapid and every stop.  ``turning`` marks moves
-    of rotary axes, ``unplaced`` those that begin at a place which the program has not said.
+    ``start`` and ``end`` are (n, 3) positions of the tip.  ``plane`` is 0 for a line, else 1, 2, 3 for an arc in XY,
+    ZX, YZ, with ``centre`` (n, 2), ``radius``, ``angle`` (start) and ``sweep`` in that plane.  ``feed`` in mm/min and
+    ``speed`` in rpm are nan where never said; ``sense`` is +1 for M3, -1 for M4, 0 while the spindle stands.
+    ``tool`` is an index into the cutters of the job.  ``chain`` counts contours: it grows at every rapid and every
+    stop.  ``turning`` marks moves of rotary axes, ``unplaced`` those that begin at a place which the program has not
+    said.
 
-    ``base`` is the machine position of program zero, known for the axes in ``placed``; the machine position of Z is that of
-    the tip plus ``base`` plus ``length_offset``.  ``systems`` are the work offsets in which the program cuts.
+    ``base`` is the machine position of program zero, known for the axes in ``placed``; the machine position of Z is
+    that of the tip plus ``base`` plus ``length_offset``.  ``systems`` are the work offsets in which the program cuts.
     """
 
     line: Ints

@@ -254,7 +254,7 @@ class _Follower:
         full = self.cutters.radius[probes.tool]
         while len(low):
             zone = shaped & (low - probes.tip < full)
-            cap = np.where(zone, low + np.maximum(0.1 * full, low - probes.tip), self.top)
+            cap = np.where(zone, low + np.maximum(0.03 * full, 0.25 * (low - probes.tip)), self.top)
             cap = np.minimum(cap, self.top)
             radius = np.where(zone, radius_at(self.cutters, probes.tool, 0.5 * (low + cap) - probes.tip), full)
             radius = np.where(np.isnan(probes.ring), radius, probes.ring)

@@ -134,6 +134,11 @@ def finding(code: int, line: int, text: str, action: str = "", count: int = 1) -
     return Finding(code, entry.severity, line, text, action or entry.action, count)
 
 
+def worst_of(count: int) -> str:
+    """The remark that a finding stands for more than one move."""
+    return f" (worst of {count} moves)" if count > 1 else ""
+
+
 def sorted_findings(found: Iterable[Finding]) -> tuple[Finding, ...]:
     """Worst severity first, then by line."""
     return tuple(sorted(found, key=lambda each: (-each.severity.rank, each.code, each.line)))
@@ -252,7 +257,7 @@ def _worst(
     if len(rows):
         k = int(rows[np.argmax(size[rows])])
         count = len(np.unique(moves[rows]))
-        yield finding(code, int(path.line[moves[k]]), f"{words(k)} (worst of {count} moves)", count=count)
+        yield finding(code, int(path.line[moves[k]]), f"{words(k)}{worst_of(count)}", count=count)
 
 
 def of_holding(
@@ -275,7 +280,7 @@ def of_holding(
                 k = int(rows[np.argmax(holding.ratio[rows])])
                 count = len(np.unique(moves[rows]))
                 share = f"{100.0 * min(holding.ratio[k], 99.0):.0f} % of what holds it"
-                text = f"axis {holding.axis}, {label.word}: the mean force reaches {share} (worst of {count} moves)"
+                text = f"axis {holding.axis}, {label.word}: the mean force reaches {share}{worst_of(count)}"
                 if verdict == Hold.DRAGGED:
                     text += f"; a compensated move is then wrong by up to {lash} mm"
                 action = advice(label, float(holding.ratio[k])) if verdict == Hold.DRAGGED else ""

@@ -217,7 +217,7 @@ def _arc(shape: Shape, predictor: Predictor) -> Feature:
     size = shape.radius + (shape.cutter if shape.side * predictor.path.sweep[shape.moves[0]] < 0.0 else -shape.cutter)
     rows = [
         measure("radius at its middle", size, [size + float(off[middle]) for off in outward]),
-        measure("largest deviation", 0.0, [float(np.max(np.abs(off))) for off in outward]),
+        measure("largest deviation", 0.0, [float(np.max(np.abs(off))) for off in outward], counts=False),
     ]
     name = f"arc radius {size:.3f} about X{shape.centre[0]:.3f} Y{shape.centre[1]:.3f}"
     return Feature("arc", name, shape.lines, shape.centre, shape.depth, tuple(rows), drag_words(dragged))
@@ -234,7 +234,8 @@ def _wall(shape: Shape, predictor: Predictor) -> tuple[Feature, list[float], boo
     off = [((part - wanted) * normal).sum(axis=1) for part in actual]
     surface = float(wanted[-1] @ normal) + (shape.cutter if shape.kind == "wall" else 0.0)
     place = [surface + float(each[-1]) for each in off]
-    rows = [measure(_position_name(shape), surface, place)]
+    name, sign = _position(shape)
+    rows = [measure(name, sign * surface, [sign * each for each in place])]
     bend = [float(each.max() - each.min()) for each in off]
     if max(bend) > 1e-4:
         rows.append(measure("step along it", 0.0, bend))
@@ -246,11 +247,11 @@ def _wall(shape: Shape, predictor: Predictor) -> tuple[Feature, list[float], boo
     return Feature(shape.kind, name, shape.lines, at, shape.depth, tuple(rows), drag_words(dragged)), place, dragged
 
 
-def _position_name(shape: Shape) -> str:
-    """Which coordinate the position of a wall is."""
+def _position(shape: Shape) -> tuple[str, float]:
+    """Which coordinate the place of a wall is, and the sign by which it counts."""
     nx, ny = shape.normal
     if abs(ny) < 1e-6:
-        return "position X" if nx > 0.0 else "position X (counted in minus)"
+        return "position X", math.copysign(1.0, nx)
     if abs(nx) < 1e-6:
-        return "position Y" if ny > 0.0 else "position Y (counted in minus)"
-    return "distance from program zero"
+        return "position Y", math.copysign(1.0, ny)
+    return "distance from program zero", 1.0

@@ -8,27 +8,26 @@ start position are not in the program; two different sets of arbitrary values st
 
 from __future__ import annotations
 
-import itertools
 import re
 from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field, replace
-from typing import NamedTuple
 
-from gcodetool.inspection.curves import Gap, gap, is_still, nearest, stray
+from gcodetool.inspection.curves import Ease, Gap, gap, nearest, stray
 from gcodetool.inspection.machines import some_setup
-from gcodetool.lash.path import Follower, Piece, Vector, intended
+from gcodetool.inspection.runs import Fleet, Run, intended_runs
+from gcodetool.lash.path import Piece, intended
 from gcodetool.lash.play import shift
+from gcodetool.lash.reversals import Detector
 from gcodetool.lash.running import Settings
 from gcodetool.machine import Machine
 from gcodetool.motion.controller import Controller
 from gcodetool.motion.frames import OFFSET_WORDS
-from gcodetool.motion.moves import ORDER, Event, Move, Setup
+from gcodetool.motion.moves import ORDER, Event, Setup
 from gcodetool.program.blocks import Block
-from gcodetool.program.numbers import QUANTA_PER_MM, decimal_to_quanta
+from gcodetool.program.numbers import MM_DIGIT, QUANTA_PER_MM, decimal_to_quanta
 
 TOLERANCE_MM = 0.0006
 _RUNS_KEPT = 64
-_HOLE_END = 0.01
 _OFFSET = re.compile(r"G5(?:[4-8]|9(?:\.[1-3])?)(?![\d.])")
 Blocks = Callable[[], Iterable[Block]]
 
@@ -73,40 +72,55 @@ class Verdict:
         )
 
 
-class Run(NamedTuple):
-    """Motion without a change between rapid and feed: its pieces, where the tool is after it, its last source line."""
-
-    rapid: bool
-    pieces: list[Piece]
-    end: Vector
-    line: int
-
-
 def verify(
     original: Blocks, result: Blocks, machine: Machine, stated: Settings | None = None, tolerance: float | None = None
 ) -> Verdict:
     """Compare two programs; ``original`` and ``result`` give the blocks of a program anew at every call.
 
     ``stated`` is what the operator has said of the start, of offsets and tool lengths; the simulated machines keep to
-    it. ``tolerance`` in mm; by default 0.0006, or the largest ripple of the machine where that is more.  Raises
-    Refusal where a program cannot be read.
+    it. ``tolerance`` in mm, by default 0.0006.  Where the ripple of an axis has passed over a reversal, and only
+    there, the axis may be off by its ripple as well.  Raises Refusal where a program cannot be read.
     """
+    stated = stated or Settings()
     lashed = [axis for axis in machine.axes.values() if axis.lash > 0]
-    ripple = max((float(axis.ripple or 0) for axis in lashed), default=0.0)
-    allowed = max((float(axis.lash) for axis in lashed), default=0.0) + float(machine.settle_margin)
+    past = max((float(axis.lash) for axis in lashed), default=0.0) + float(machine.settle_margin)
+    past = max(past, stated.hole_overshoot / QUANTA_PER_MM)
     base = Verdict(
-        tolerance=tolerance if tolerance is not None else max(TOLERANCE_MM, ripple + 1e-4),
-        stray_allowed=allowed * len(lashed) ** 0.5 + TOLERANCE_MM,
+        tolerance=TOLERANCE_MM if tolerance is None else tolerance,
+        stray_allowed=past * len(lashed) ** 0.5 + TOLERANCE_MM,
         corners=2 ** len(lashed),
     )
-    stated = stated or Settings()
     for skip in _switches(original, stated):
         for seed in (1, 2):
             setup = some_setup(seed, machine, stated, _first_offset(original), skip)
-            base = base.joined(_compare(original(), result(), machine, setup, stated))
+            ease = _ripple_places(original(), machine, setup)
+            base = base.joined(_compare(original(), result(), machine, setup, stated, ease))
             if seed == 1:
                 base = base.joined(_uncompensated(original(), machine, setup, stated))
     return base
+
+
+def _ripple_places(blocks: Iterable[Block], machine: Machine, setup: Setup) -> Ease | None:
+    """Where the ripple of the sheet has passed over a reversal: lines of the original and axes; None without a ripple.
+
+    There the side that is held differs from the one that the motion has.  The move after it is one of these places too,
+    because it begins where they end.
+    """
+    stated = {a: axis.ripple for a, axis in machine.axes.items() if axis.lash and axis.ripple}
+    if not stated:
+        return None
+    finest = dict.fromkeys(stated, MM_DIGIT[machine.decimals])
+    plain, passing = Detector(finest), Detector({a: decimal_to_quanta(value) for a, value in stated.items()})
+    lines: dict[int, frozenset[int]] = {}
+    before: frozenset[int] = frozenset()
+    for item in Controller(setup).run(blocks):
+        plain.take(item)
+        passing.take(item)
+        here = frozenset(k for k, (a, b) in enumerate(zip(plain.sides, passing.sides, strict=True)) if a != b)
+        if here or before:
+            lines[item.line] = lines.get(item.line, frozenset()) | here | before
+        before = here
+    return Ease(tuple(float(stated.get(letter, 0)) for letter in ORDER), lines)
 
 
 def _switches(original: Blocks, stated: Settings) -> tuple[bool, ...]:
@@ -125,160 +139,6 @@ def _first_offset(original: Blocks) -> str:
     return OFFSET_WORDS[0]
 
 
-# ---- running a program -----------------------------------------------------------------------------------------------
-
-
-class _Sink:
-    """Collects pieces into runs."""
-
-    def __init__(self) -> None:
-        self.rapid: bool | None = None
-        self.pieces: list[Piece] = []
-        self.line = 0
-
-    def add(self, piece: Piece, end: Vector) -> Run | None:
-        """Take one piece; the run that it ends, if it ends one.  ``end`` is where the tool stood before it."""
-        if piece.hole in ("peck", "back"):
-            # depths on the way are cut again; how often depends on the play, the hole does not
-            return None
-        if piece.hole == "out":
-            piece = piece._replace(rapid=True)
-        elif piece.hole:
-            piece = _bottom(piece)
-        if is_still(piece) or (piece.rapid and _hardly_moves(piece)):
-            return None
-        done = None
-        if self.rapid is not None and piece.rapid != self.rapid:
-            done = Run(self.rapid, self.pieces, end, self.line)
-            self.pieces = []
-        self.rapid = piece.rapid
-        self.pieces.append(piece)
-        self.line = piece.line
-        return done
-
-    def copy(self) -> _Sink:
-        """One that goes on from here by itself."""
-        other = _Sink()
-        other.rapid, other.pieces, other.line = self.rapid, list(self.pieces), self.line
-        return other
-
-    def last(self, end: Vector) -> Run | None:
-        """The run at the end of the program."""
-        return Run(self.rapid, self.pieces, end, self.line) if self.rapid is not None else None
-
-
-def _bottom(piece: Piece) -> Piece:
-    """Of a feed inside a cycle the last hundredth that cuts: above it the tool is in the hole that it has made.
-
-    The return in air may stray by the lash, so a hole may be begun that much lower; its bottom and its place are exact.
-    """
-    way = [b - a for a, b in zip(piece.start, piece.end, strict=True)]
-    length = max(map(abs, way))
-    if length <= _HOLE_END:
-        return piece
-    step = tuple([w / length * _HOLE_END for w in way])
-    return piece._replace(start=tuple([b - s for b, s in zip(piece.end, step, strict=True)]))
-
-
-def _hardly_moves(piece: Piece) -> bool:
-    """A rapid within the tolerance is no motion of its own: rounding must not cut a feed in two."""
-    return all(abs(a - b) <= TOLERANCE_MM for a, b in zip(piece.start, piece.end, strict=True))
-
-
-def _intended_runs(happenings: Iterable[Move | Event]) -> Iterator[Run]:
-    sink, end = _Sink(), None
-    for move in happenings:
-        if isinstance(move, Move):
-            piece = intended(move)
-            done = sink.add(piece, end or piece.start)
-            if done:
-                yield done
-            end = piece.end
-        else:
-            end = tuple(value / QUANTA_PER_MM for value in move.at)
-    done = sink.last(end or (0.0,) * 6)
-    if done:
-        yield done
-
-
-class _Corner:
-    """One simulated machine: a follower, the run it is in, and how many runs it has done."""
-
-    def __init__(self, follower: Follower, sink: _Sink, done: int) -> None:
-        self.follower = follower
-        self.sink = sink
-        self.done = done
-
-    def go(self, move: Move) -> list[tuple[int, Run]]:
-        """The numbered runs that a move ends."""
-        done = []
-        before = self.follower.seen(move.start)
-        for piece in self.follower.drive(move):
-            run = self.sink.add(piece, before)
-            if run:
-                done.append((self.done, run))
-                self.done += 1
-            before = piece.end
-        return done
-
-    def follows(self, other: _Corner) -> bool:
-        """True where the rest of the journey can only be that of the other machine."""
-        return (
-            self.done == other.done
-            and self.follower.state() == other.follower.state()
-            and self.sink.pieces == other.sink.pieces
-        )
-
-
-class _Fleet:
-    """The machine from every corner of the unknown; those that have become alike are simulated once."""
-
-    def __init__(self, machine: Machine, setup: Setup, stated: Settings) -> None:
-        lash = {letter: float(axis.lash) for letter, axis in machine.axes.items()}
-        datum = {letter: axis.datum for letter, axis in machine.axes.items()}
-        lashed = [letter for letter in lash if lash[letter] > 0]
-        self._at: Sequence[int] = [setup.start.get(letter, 0) for letter in ORDER]
-        self._sides = [
-            dict(zip(lashed, sides, strict=True)) for sides in itertools.product((-1, 1), repeat=len(lashed))
-        ]
-        known = {letter: said.side for letter, said in stated.start.items() if said.side}
-        self._corners = [_Corner(Follower(lash, datum, self._at, sides, known), _Sink(), 0) for sides in self._sides]
-
-    @property
-    def base(self) -> _Corner:
-        """The machine that all others end up following."""
-        return self._corners[0]
-
-    def runs(self, happenings: Iterable[Move | Event]) -> Iterator[tuple[int, Run]]:
-        """All runs of all machines, numbered."""
-        for item in happenings:
-            if isinstance(item, Move):
-                for corner in self._corners:
-                    yield from corner.go(item)
-                self._at = item.end
-                if len(self._corners) > 1:
-                    base = self._corners[0]
-                    self._corners = [base, *(c for c in self._corners[1:] if not c.follows(base))]
-            elif item.what in ("tool change", "home"):
-                self._lose(item)
-        for corner in self._corners:
-            run = corner.sink.last(corner.follower.seen(self._at))
-            if run:
-                yield corner.done, run
-
-    def _lose(self, event: Event) -> None:
-        base = self._corners[0]
-        alive = [corner.follower.sides for corner in self._corners]
-        self._corners += [
-            _Corner(base.follower.copy(sides), base.sink.copy(), base.done)
-            for sides in self._sides
-            if sides not in alive
-        ]
-        for corner in self._corners:
-            corner.follower.lose(event.at, event.letters, kept=event.what == "tool change")
-        self._at = event.at
-
-
 # ---- comparing -------------------------------------------------------------------------------------------------------
 
 
@@ -292,13 +152,18 @@ def _contacts(blocks: Iterable[Block], setup: Setup) -> list[dict[str, int]]:
 
 
 def _compare(
-    original: Iterable[Block], result: Iterable[Block], machine: Machine, setup: Setup, stated: Settings
+    original: Iterable[Block],
+    result: Iterable[Block],
+    machine: Machine,
+    setup: Setup,
+    stated: Settings,
+    ease: Ease | None,
 ) -> Verdict:
     kept = list(original)
     contacts = _contacts(kept, setup) if any("38." in block.text for block in kept) else []
     driven = _touching(machine, setup, contacts) if contacts else setup
-    got = _Fleet(machine, setup, stated).runs(Controller(driven).run(result))
-    return _pairs(_intended_runs(Controller(setup).run(kept)), got)
+    got = Fleet(machine, setup, stated).runs(Controller(driven).run(result))
+    return _pairs(intended_runs(Controller(setup).run(kept)), got, ease)
 
 
 def _touching(machine: Machine, setup: Setup, contacts: Sequence[Mapping[str, int]]) -> Setup:
@@ -327,7 +192,7 @@ class _Wanted:
         return self._kept.get(number)
 
 
-def _pairs(wanted: Iterator[Run], got: Iterable[tuple[int, Run]]) -> Verdict:
+def _pairs(wanted: Iterator[Run], got: Iterable[tuple[int, Run]], ease: Ease | None) -> Verdict:
     feed, away, pieces, last = Gap(), Gap(), 0, -1
     kept = _Wanted(wanted)
     for number, have in got:
@@ -340,7 +205,7 @@ def _pairs(wanted: Iterator[Run], got: Iterable[tuple[int, Run]]) -> Verdict:
             stood = [before.pieces[-1]._replace(start=before.end, end=before.end, arc=None)] if before else []
             away = away.wider(stray([*stood, *want.pieces], have.pieces))
         else:
-            feed = feed.wider(gap(want.pieces, have.pieces))
+            feed = feed.wider(gap(want.pieces, have.pieces, ease))
         pieces += len(want.pieces) if not want.rapid and number > last else 0
         last = max(last, number)
     rest = kept[last + 1]
@@ -367,7 +232,7 @@ def _uncompensated(blocks: Iterable[Block], machine: Machine, setup: Setup, stat
     The table lags behind its drive, so a point is compared with the move it belongs to and the one before; and the
     end of each move with the path that the table takes in it and in the next one.
     """
-    follower = _Fleet(machine, setup, stated).base.follower
+    follower = Fleet(machine, setup, stated).base.follower
     worst = Gap()
     before: list[Piece] = []
     before_actual: list[Piece] = []

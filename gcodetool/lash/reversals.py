@@ -71,6 +71,11 @@ class Detector:
         self._side = [0] * 6
         self._extreme: list[int] = [0] * 6
 
+    @property
+    def sides(self) -> tuple[int, ...]:
+        """The side of each axis, X Y Z A B C, 0 where it is not known."""
+        return tuple(self._side)
+
     def take(self, item: Happening) -> list[Reversal]:
         """The reversals of one move; after an event the sides it loses are forgotten."""
         if isinstance(item, Event):

@@ -117,7 +117,9 @@ def time_lines(audit: Audit) -> list[str]:
     if times.stop_to_stop is not None:
         lines.append(f"stopping after every block {clock(times.stop_to_stop)}; the truth lies between")
     if times.take_ups:
-        lines.append(f"take-ups: {times.take_ups}, which add {clock(times.take_up_time)}: {clock(whole + times.take_up_time)}")
+        lines.append(
+            f"take-ups: {times.take_ups}, which add {clock(times.take_up_time)}: {clock(whole + times.take_up_time)}"
+        )
     return [*lines, *times.said]
 
 
@@ -159,9 +161,7 @@ def as_json(audit: Audit) -> dict[str, Any]:
     """The whole audit as plain data; what is not known is None."""
     data: dict[str, Any] = {"schema": SCHEMA, "units": "mm"}
     data.update((field.name, _plain(getattr(audit, field.name))) for field in dataclasses.fields(audit))
-    data["flips"] = [
-        {"after": before, "line": line, "from": old, "to": new} for before, line, old, new in audit.flips
-    ]
+    data["flips"] = [{"after": before, "line": line, "from": old, "to": new} for before, line, old, new in audit.flips]
     data["durations"].pop("by_move")
     for row, feature in zip(data["features"], audit.features, strict=True):
         row["worst_before"], row["worst_after"] = feature.worst, feature.worst_after

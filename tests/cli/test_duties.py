@@ -18,7 +18,7 @@ READING = {
     "reversals": ["reversals", "--units", "mm", "-"],
     "verify": ["verify", *LASH, "--units", "mm", "-", "{file}"],
 }
-WITHOUT_PROGRAM = {"machine"}
+WITHOUT_PROGRAM = {"machine", "measure"}
 READERS = [verb for verb in VERBS if verb in READING]
 
 

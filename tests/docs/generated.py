@@ -13,7 +13,7 @@ from gcodetool.lash.compensate import Compensator
 from gcodetool.lash.running import Settings
 from gcodetool.machine import machine_from_options
 from gcodetool.motion.dialect import G_CODES, M_CODES, Code
-from gcodetool.program.blocks import blocks
+from gcodetool.program.blocks import blocks_of
 from tests.docs.samples import REFUSED
 
 COMPLETION = ("--install-completion", "--show-completion")
@@ -133,7 +133,7 @@ def refusal_of(program: str) -> Refusal:
     """The refusal that a program gets on a machine with lash on X, Y and Z; AssertionError where it is not refused."""
     machine = machine_from_options(lash=["x=0.1", "y=0.1", "z=0.1", "a=0.1"])
     try:
-        Compensator(machine, Settings(), lambda text: None, "", False).rewrite(blocks(program.encode().splitlines(keepends=True)))
+        Compensator(machine, Settings(), lambda text: None, "", False).rewrite(blocks_of(program.encode()))
     except Refusal as refusal:
         return refusal
     raise AssertionError(f"not refused: {program!r}")

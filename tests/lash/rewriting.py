@@ -33,7 +33,9 @@ def as_bytes(program: Text) -> bytes:
     return program.encode("latin-1") if isinstance(program, str) else program
 
 
-def sheet(lash: Mapping[str, str], datum: Mapping[str, str] | None = None, units: str | None = "mm", **options: Any) -> Machine:
+def sheet(
+    lash: Mapping[str, str], datum: Mapping[str, str] | None = None, units: str | None = "mm", **options: Any
+) -> Machine:
     """The machine of these options; ``ripple`` is a mapping too."""
     ripple = options.pop("ripple", None) or {}
     return machine_from_options(
@@ -52,10 +54,14 @@ def stated(**options: Any) -> Settings:
     return settings_from(**values)  # type: ignore[arg-type]
 
 
-def rewrite(program: Text, machine: Machine, settings: Settings | None = None, header: str = "", again: bool = False) -> tuple[bytes, Tally]:
+def rewrite(
+    program: Text, machine: Machine, settings: Settings | None = None, header: str = "", again: bool = False
+) -> tuple[bytes, Tally]:
     """The rewritten program and what the rewriting did."""
     out: list[str] = []
-    tally = Compensator(machine, settings or Settings(), out.append, header, again).rewrite(blocks_of(as_bytes(program)))
+    tally = Compensator(machine, settings or Settings(), out.append, header, again).rewrite(
+        blocks_of(as_bytes(program))
+    )
     return "".join(out).encode("latin-1"), tally
 
 
@@ -119,7 +125,9 @@ def assert_right(original: Text, result: Text, lash: Mapping[str, str], **option
     """Fail, with both programs, unless the oracle finds the result right."""
     report = judged(original, result, lash, **options)
     tolerance = options.get("tolerance", TOLERANCE)
-    shown = "\n".join(["", as_bytes(original).decode("latin-1"), "---- became", as_bytes(result).decode("latin-1"), str(report)])
+    shown = "\n".join(
+        ["", as_bytes(original).decode("latin-1"), "---- became", as_bytes(result).decode("latin-1"), str(report)]
+    )
     assert report.ok(tolerance), shown
     return report
 
