@@ -14,11 +14,12 @@ from collections.abc import Callable, Iterable
 from typing import NamedTuple
 
 from gcodetool.lash.running import Running
-from gcodetool.lash.track import Track, in_one_quadrant, shifted_text
+from gcodetool.lash.track import ANY_SIDE, Track, in_one_quadrant, shifted_text
 from gcodetool.motion.dialect import CENTRE_LETTER, PLANE_AXES
 from gcodetool.motion.modal import ModalState, g_words, step
 from gcodetool.motion.targets import LOOSEST_MISMATCH_MM
 from gcodetool.program.blocks import Block
+from gcodetool.program.rewrite import Word, look_of, new_line
 from gcodetool.program.words import WORD
 
 _LETTERS = frozenset("NGFXYZABCIJK")
@@ -60,7 +61,7 @@ class Quick:
                 pieces = split(block.text)
                 letters = join(pieces[1::3])
                 plan = plans[letters] if letters in plans else self._new_plan(letters)
-                if plan is not None and (not (gaps := join(pieces[::3])) or gaps.isspace()) and take(pieces, plan):
+                if plan is not None and (not (gaps := join(pieces[::3])) or gaps.isspace()) and take(block, pieces, plan):
                     text = join(pieces) + block.ending
                     if out.slot is None:
                         out.write(text)
@@ -117,7 +118,7 @@ class Quick:
             track.read(self._inch, self._run.machine.decimals)
         return track
 
-    def _take(self, pieces: list[str], plan: _Plan) -> bool:
+    def _take(self, block: Block, pieces: list[str], plan: _Plan) -> bool:
         """Shift the words and say True, or leave everything as it is and say False."""
         run = self._run
         state = run.state
@@ -128,24 +129,51 @@ class Quick:
         if not f and run.feed_written != run.feed and run.feed_written is not None and motion != "G0":
             return False
         found: _Found = []
+        turning: list[Track] = []
         for track, index in axes:
             text = pieces[index]
             if len(text) > _LONGEST:
                 return False
             at, side = float(text), track.side
-            if side != 2 and (at < track.far if side > 0 else not side or at > track.far):
-                if motion != "G0" or not side or abs(at - track.far) <= track.ripple:
+            if side != ANY_SIDE and (at < track.far if side > 0 else not side or at > track.far):
+                if not side or abs(at - track.far) <= track.ripple:
                     return False
                 side = -side
+                turning.append(track)
             found.append((track, side, text, at))
         if centre and not self._is_plain_arc(pieces, centre, found, state, motion):
             return False
+        if turning and motion != "G0" and not self._may_turn(motion, g):
+            return False
         if f:
-            run.feed = run.feed_written = pieces[f].lstrip()
+            run.feed = pieces[f].lstrip()
+        if turning and motion != "G0":
+            self._take_up(block, pieces, turning)
+        if f:
+            run.feed_written = run.feed
         if motion != state.motion:
             run.state = step(state, g_words((pieces[g],)))
         self._shift(pieces, axes, found)
         return True
+
+    def _may_turn(self, motion: str, g: int) -> bool:
+        """True where a take-up needs no slot, no feed of its own, and no motion word to be said again."""
+        run = self._run
+        return run.out.slot is None and run.machine.take_up_feed is None and bool(g or motion == "G1")
+
+    def _take_up(self, block: Block, pieces: list[str], turning: list[Track]) -> None:
+        """Write the take-up line before a feed that turns these axes."""
+        run = self._run
+        words: list[Word] = [("G", "1")]
+        for track in turning:
+            track.tell(self._inch)
+            number = run.number_at(track.axis, run.state, -track.side, pieces[track.index_in(pieces)])
+            words.append((track.axis.letter, number))
+        if run.feed is not None and run.feed != run.feed_written:
+            words.append(("F", run.feed))
+        run.count(block.number, run.state, [track.axis for track in turning], True, run.feed)
+        look = look_of(pieces, "".join(pieces[1::3]).islower(), run.usual_blank)
+        run.out.write(new_line(words, look) + (block.ending or run.usual_ending))
 
     def _is_plain_arc(
         self, pieces: list[str], centre: dict[str, int], found: _Found, state: ModalState, motion: str
@@ -168,7 +196,10 @@ class Quick:
         if abs(math.hypot(*u) - math.hypot(*v)) * scale > LOOSEST_MISMATCH_MM:
             return False
         ways = in_one_quadrant(u, (v[0], v[1]), motion == "G3")
-        return ways is not None and all(t.placed and t.side in (2, way) for t, way in zip(tracks, ways, strict=True))
+        sides = {track: side for track, side, _, _ in found}
+        return ways is not None and all(
+            t.placed and sides.get(t, t.side) in (ANY_SIDE, way) for t, way in zip(tracks, ways, strict=True)
+        )
 
     def _shift(self, pieces: list[str], axes: tuple[tuple[Track, int], ...], found: _Found) -> None:
         """Move the axes to their targets and shift the words."""

@@ -94,7 +94,7 @@ class Running:
         block = command.block
         touched = [*touched, *(letter for letter, _ in command.shape.axes)]
         if len(texts) > 1 or texts[0] != block.text:
-            self.tally.changed += 1
+            self.tally.changed += block.text not in texts
             if "*" in command.pieces[-1]:
                 texts = [with_check_sum(text) for text in texts]
         self.out.put(lines(texts, block.ending, self.usual_ending), touched)
@@ -182,7 +182,7 @@ class Running:
         slot = self.out.slot
         assert slot is not None
         self.out.take((axis.letter, self.number_at(axis, slot.state, side, self._like(command, axis))))
-        self._count(command, [axis], False, None)
+        self.count(command.block.number, command.after, [axis], False, None)
 
     def _take_up_here(self, command: Command, sides: Mapping[str, int], state: ModalState) -> str:
         words: list[Word] = []
@@ -203,7 +203,7 @@ class Running:
         if feed is not None:
             words.append(("F", feed))
             self.feed_written = feed
-        self._count(command, axes, True, feed or self.feed)
+        self.count(command.block.number, command.after, axes, True, feed or self.feed)
         return new_line(words, self.look(command))
 
     def _like(self, command: Command, axis: AxisKnowledge) -> str:
@@ -219,13 +219,16 @@ class Running:
         text = f"{value:.3f}".rstrip("0").rstrip(".")
         return None if text == self.feed_written else text
 
-    def _count(self, command: Command, axes: Sequence[AxisKnowledge], in_cut: bool, feed: str | None) -> None:
+    def count(
+        self, line: int, state: ModalState, axes: Sequence[AxisKnowledge], in_cut: bool, feed: str | None
+    ) -> None:
+        """Count one take-up block, made for a source line, of these axes at a feed."""
         crossed = max(axis.mm_lash for axis in axes) / QUANTA_PER_MM
-        per_minute = _feed_mm(feed, command.after) if in_cut else self._rapid_feed(axes)
+        per_minute = _feed_mm(feed, state) if in_cut else self._rapid_feed(axes)
         seconds = stop_to_stop(crossed, per_minute / 60.0, self._acceleration(axes)) if per_minute else 0.0
         letters = "".join([axis.letter for axis in axes])
         length = sum([a.mm_lash for a in axes if not a.rotary]) / QUANTA_PER_MM
-        self.tally.take_up(TakeUp(seconds, command.block.number, letters, in_cut), length)
+        self.tally.take_up(TakeUp(seconds, line, letters, in_cut), length)
 
     def _acceleration(self, axes: Sequence[AxisKnowledge]) -> float:
         """The smallest acceleration that the sheet gives for these axes, 0 where it gives none."""

@@ -60,11 +60,18 @@ class Track:
         in_inches = inch and not axis.rotary
         if self.side != ANY_SIDE:
             axis.side = self.side
+        if not self.last:
+            return
         axis.position = axis.extreme = to_quanta(self.last, INCH_DIGIT if in_inches else MM_DIGIT)
         axis.decimals = max(axis.decimals, decimals_of(self.last))
         axis.shift = axis.shifts[in_inches][axis.side]
         axis.framed = True
         self.last = ""
+
+    def index_in(self, pieces: list[str]) -> int:
+        """Index of the number of this axis in a split block."""
+        upper, lower = self.axis.letter, self.axis.letter.lower()
+        return next(i + 1 for i in range(1, len(pieces), 3) if pieces[i] in (upper, lower))
 
 
 def in_one_quadrant(u: tuple[float, float], v: tuple[float, float], counter: bool) -> tuple[int, int] | None:
