@@ -61,7 +61,8 @@ class Quick:
                 pieces = split(block.text)
                 letters = join(pieces[1::3])
                 plan = plans[letters] if letters in plans else self._new_plan(letters)
-                if plan is not None and (not (gaps := join(pieces[::3])) or gaps.isspace()) and take(block, pieces, plan):
+                gaps = join(pieces[::3])
+                if plan is not None and (not gaps or gaps.isspace()) and take(block, pieces, plan):
                     text = join(pieces) + block.ending
                     if out.slot is None:
                         out.write(text)
@@ -128,19 +129,10 @@ class Quick:
             return False
         if not f and run.feed_written != run.feed and run.feed_written is not None and motion != "G0":
             return False
-        found: _Found = []
-        turning: list[Track] = []
-        for track, index in axes:
-            text = pieces[index]
-            if len(text) > _LONGEST:
-                return False
-            at, side = float(text), track.side
-            if side != ANY_SIDE and (at < track.far if side > 0 else not side or at > track.far):
-                if not side or abs(at - track.far) <= track.ripple:
-                    return False
-                side = -side
-                turning.append(track)
-            found.append((track, side, text, at))
+        targets = _targets(pieces, axes)
+        if targets is None:
+            return False
+        found, turning = targets
         if centre and not self._is_plain_arc(pieces, centre, found, state, motion):
             return False
         if turning and motion != "G0" and not self._may_turn(motion, g):
@@ -213,3 +205,21 @@ class Quick:
                 pieces[index] = shifted_text(text, track.step, track.places)
                 changed = True
         self._run.tally.changed += changed
+
+
+def _targets(pieces: list[str], axes: tuple[tuple[Track, int], ...]) -> tuple[_Found, list[Track]] | None:
+    """Track, side, text and value of each target word, and the tracks that turn; None where that cannot be judged."""
+    found: _Found = []
+    turning: list[Track] = []
+    for track, index in axes:
+        text = pieces[index]
+        if len(text) > _LONGEST:
+            return None
+        at, side = float(text), track.side
+        if side != ANY_SIDE and (at < track.far if side > 0 else not side or at > track.far):
+            if not side or abs(at - track.far) <= track.ripple:
+                return None
+            side = -side
+            turning.append(track)
+        found.append((track, side, text, at))
+    return found, turning

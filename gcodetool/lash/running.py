@@ -197,7 +197,7 @@ class Running:
         if command.after.motion:
             words.append(("G", "0" if by_rapid else "1"))
             self.motion_written = "G0" if by_rapid else "G1"
-        axes = [self.axes[letter] for letter in sides]
+        axes = [axis for axis in self.axes.values() if axis.letter in sides]
         words += [(a.letter, self.number_at(a, state, sides[a.letter], self._like(command, a))) for a in axes]
         feed = None if by_rapid else self._take_up_feed(command, state)
         if feed is not None:

@@ -33,10 +33,10 @@ def found(program: str, ripple: dict[str, int] | None = None) -> list[tuple[str,
 
 
 def sampled(program: bytes) -> Iterator[tuple[np.ndarray, int]]:
-    """Points of every move of the oracle's controller, arcs in chords of a hundredth of a degree at most."""
+    """Points of every move of the oracle's controller, arcs in chords of half a degree at most, quadrant points included."""
     for motion in run(program, Machine()):
         if isinstance(motion, Motion):
-            points = sample_arc(motion.arc, motion.start, motion.end, 1e-7) if motion.arc else np.array([motion.end])
+            points = sample_arc(motion.arc, motion.start, motion.end) if motion.arc else np.array([motion.end])
             yield points, motion.line
 
 
@@ -91,7 +91,7 @@ def test_all_spellings_of_one_path_turn_at_the_same_places(seed: int) -> None:
         "G21\n(nothing)\nM3 S100",
         "G21 G0 X1\nX2\nG1 X3 Y5 F100",
         "G21 G0 X5\nX5\nG4 X2\nX5.0",
-        "G21 G2 X10 Y10 J10 F1",  # a quarter
+        "G21 G3 X10 Y10 J10 F1",  # a quarter
         "G21 G0 X-5\nG92 X0\nG1 X-1 F10",
         "G21 G1 X1 F10\n(X-5)\n; X-9\nX2",
     ],
@@ -143,8 +143,8 @@ def test_a_deadband_over_the_series_of_astm_e1049(ripple: float, expected: list[
 
 def test_sides_are_forgotten_where_nobody_knows_them() -> None:
     """After a tool change, home or machine coordinates the next direction follows from nothing."""
-    assert found("G21 G1 X10 F1\nM6 T2\nG1 X5\nX7") == [("X", 5, 1)]
-    assert found("G21 G1 X10 F1\nG28 X20\nG1 X5\nX7") == [("X", 5, 1)]
+    assert found("G21 G1 X10 F1\nM6 T2\nG1 X5\nX7\nX6") == [("X", 7, -1)]
+    assert found("G21 G1 X10 F1\nG28 X20\nG1 X5\nX7\nX6") == [("X", 7, -1)]
     assert found("G21 G1 X10 F1\nG53 G0 X2\nG1 X5\nX3\nX4") == [("X", 3, 1)]
 
 
