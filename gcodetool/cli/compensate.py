@@ -23,6 +23,7 @@ from gcodetool.cli.options import (
     UnitsOption,
     machine_from,
 )
+from gcodetool.cli.sheet_words import sheet_lines
 from gcodetool.cli.stated import (
     BlockDeleteOption,
     HoleOvershootOption,
@@ -90,15 +91,16 @@ def command(
     settings = settings_from(start, offset, length, block_delete, look_ahead, hole_overshoot)
     _check_overshoot(settings, sheet)
     tell = _hush if quiet else _say_lines
+    sheet_words = sheet_lines(sheet, machine is not None)
     if live:
         if output != "-":
             raise OutputRefused("a live program goes to standard output; leave -o out")
         with open_source(program, name, live=True) as source:
             tally = _live(source, sheet, settings, again)
-        tell(compensation_lines(tally, sheet, None))
+        tell(compensation_lines(tally, sheet, None, sheet_words))
         return
     with draft(output, force=force, inputs=[program]) as result, open_source(program, name) as source:
-        _whole(source, result, sheet, settings, again, stops, tell)
+        _whole(source, result, sheet, settings, again, stops, sheet_words, tell)
 
 
 def _say_lines(lines: list[str]) -> None:
@@ -130,6 +132,7 @@ def _whole(
     settings: Settings,
     again: bool,
     stops: bool,
+    sheet_words: list[str],
     tell: Callable[[list[str]], None],
 ) -> None:
     from gcodetool.inspection.verify import verify
@@ -155,7 +158,7 @@ def _whole(
     if not verdict.holds:
         found = "\n".join(proof_lines(verdict))
         raise ProofError(f"the rewritten program fails its own proof, so it is not let out\n{found}")
-    lines = compensation_lines(tally, machine, verdict)
+    lines = compensation_lines(tally, machine, verdict, sheet_words)
     if settings.hole_overshoot:
         lines[-len(CAUTIONS) : -len(CAUTIONS)] = [_prove_holes(source, result, machine, settings)]
     if any(axis.ripple for axis in machine.axes.values()):

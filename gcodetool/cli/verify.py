@@ -18,6 +18,7 @@ from gcodetool.cli.options import (
     UnitsOption,
     machine_from,
 )
+from gcodetool.cli.sheet_words import sheet_lines
 from gcodetool.cli.stated import HoleOvershootOption, LengthOption, OffsetOption, StartOption, settings_from
 from gcodetool.cli.streams import open_source
 from gcodetool.cli.tables import show
@@ -66,7 +67,7 @@ def command(
     if as_json:
         show(json.dumps(_plain(verdict), indent=2))
     else:
-        show(f"lash: {lash_line(sheet)}", *proof_lines(verdict), *CAUTIONS)
+        show(f"lash: {lash_line(sheet)}", *proof_lines(verdict), *sheet_lines(sheet, machine is not None), *CAUTIONS)
     if not verdict.holds:
         raise typer.Exit(ExitCode.FINDINGS)
 

@@ -12,9 +12,10 @@ from collections.abc import Iterable, Iterator, Mapping
 from decimal import Decimal
 
 from gcodetool.inspection.measure_records import Move, Note, Pause, ProgramPlan, Spindle, Step, Visit
+from gcodetool.lash.compensate import MEASURING
 
 WIDTH = 80
-WARNING = "gcodetool measure: run as it is, never compensate"
+WARNING = MEASURING
 
 
 def program_text(plan: ProgramPlan, seconds: float | None = None) -> str:

@@ -26,6 +26,7 @@ from gcodetool.program.rewrite import join_words
 
 Mover = Callable[[Running, Command], None]
 MARK = "lash taken up by gcodetool"
+MEASURING = "gcodetool measure: run as it is, never compensate"
 _MARK_LINES = 50
 
 
@@ -89,6 +90,9 @@ class Compensator:
         if block.number <= _MARK_LINES and MARK in block.text and not self._again:
             reason = "this program has been rewritten for lash already"
             raise Refusal(block.number, block.text.strip()[:60], reason, "Start from the original, or use --again")
+        if block.number <= _MARK_LINES and MEASURING in block.text:
+            reason = "this program measures the lash, which must be there for it"
+            raise Refusal(block.number, block.text.strip()[:60], reason, "Run it as it is")
         self._rewrite_block(block)
 
     def _rewrite_block(self, block: Block) -> None:

@@ -29,8 +29,10 @@ def lash_line(machine: Machine) -> str:
     return ", ".join(parts) + " (mm)" if parts else "no lash"
 
 
-def compensation_lines(tally: Tally, machine: Machine, verdict: Verdict | None) -> list[str]:
-    """The summary of a rewriting; ``verdict`` is None where there was no proof."""
+def compensation_lines(
+    tally: Tally, machine: Machine, verdict: Verdict | None, sheet_words: Sequence[str] = ()
+) -> list[str]:
+    """The summary of a rewriting; ``verdict`` is None where there was no proof, ``sheet_words`` speak of the sheet."""
     per_axis = ", ".join(f"{letter} {tally.take_ups[letter]}" for letter in ORDER if tally.take_ups[letter]) or "none"
     lines = [
         f"lash: {lash_line(machine)}",
@@ -52,6 +54,7 @@ def compensation_lines(tally: Tally, machine: Machine, verdict: Verdict | None) 
         f"blocks changed: {tally.changed} of {tally.blocks}; path added: {tally.path_added:.2f} mm"
     )
     lines += proof_lines(verdict) if verdict is not None else ["proof: none was made, because the program is sent live"]
+    lines += sheet_words
     lines += [f"caution: line {line}: {text}" for text, line in tally.cautions.items()]
     return [*lines, *CAUTIONS]
 

@@ -89,7 +89,7 @@ def test_the_published_centre_line_is_climb_all_round() -> None:
     seen = look(CENTRE_LINE, 1.0, tuple((x, y) for x, y in outline))
     assert [seen.words()[line] for line in range(6, 13)] == ["climb"] * 7
     turned = look(reversed_centre_line(), 1.0, tuple((x, y) for x, y in outline))
-    assert set(list(turned.words().values())) == {"conventional"}
+    assert set(turned.words().values()) == {"conventional"}
 
 
 def reversed_centre_line() -> str:
@@ -134,8 +134,7 @@ def test_arcs_that_bite_in_from_one_side_are_climb() -> None:
     lines = ["G0 X0 Y-4 Z5", "G0 Z-1"]
     for k in range(1, 30):
         x = 0.4 * k
-        lines += [f"G3 X{x:.4f} Y4 I0 J4", f"G3 X{x:.4f} Y-4 I0 J-4"] if k > 1 else [f"G3 X{x:.4f} Y4 R4.005", f"G3 X{x:.4f} Y-4 I0 J-4"]
-        lines[-2] = f"G3 X{x:.4f} Y4 R4.005"
+        lines += [f"G3 X{x:.4f} Y4 R4.005", f"G3 X{x:.4f} Y-4 I0 J-4"]
     seen = look(HEAD + "\n".join(lines), D)
     labels = [seen.words()[line] for line in range(20, 60, 2)]
     assert set(labels) == {"climb"}
@@ -167,7 +166,7 @@ def random_moves(seed: int) -> list[tuple[float, float]]:
 def lines_of(points: list[tuple[float, float]], mirror: bool = False, first_cut: tuple[float, float] | None = None) -> str:
     sign = -1.0 if mirror else 1.0
     cut = first_cut or (0.0, 0.0)
-    text = [HEAD.rstrip(), f"G0 X{sign * cut[0]:.3f} Y-40 Z5", "G0 Z-1", f"G1 Y40", "G0 Z5"]
+    text = [HEAD.rstrip(), f"G0 X{sign * cut[0]:.3f} Y-40 Z5", "G0 Z-1", "G1 Y40", "G0 Z5"]
     text += [f"G0 X{sign * points[0][0]:.3f} Y{points[0][1]:.3f}", "G0 Z-1"]
     return "\n".join(text + [f"G1 X{sign * x:.3f} Y{y:.3f}" for x, y in points[1:]]) + "\n"
 
@@ -218,7 +217,7 @@ def test_a_contour_that_crosses_a_slot_flips_where_the_wall_changes_side() -> No
 
 def test_labels_by_line_know_every_feed_line_and_no_other() -> None:
     program = HEAD + "G0 X-40 Y0 Z5\nG1 Z-2\nG1 X40\n(a remark)\nG0 Z5\nG0 X0 Y20\nG1 Z-2\nG0 Z5\nG81 X5 Y30 Z-2 R1\nX9\nG80\n"
-    job = Job(cutters=(Cutter("*", D),), stock=StockShape(box(-30.0, -2.0, 30.0, 60.0), 0.0))
+    job = Job(cutters=(Cutter("*", D),), stock=StockShape(box(-30.0, -1.0, 30.0, 60.0), 0.0))
     assert labels_by_line(program.encode(), job, SETUP) == {
         5: "plunge", 6: "conventional", 10: "drill", 12: "drill", 13: "drill",
     }  # fmt: skip
