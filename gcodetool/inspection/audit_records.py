@@ -48,7 +48,8 @@ class Shape:
     ``kind`` is bore, boss, arc, wall, slot or hole.  ``moves`` are the moves that leave it, in order, from the first to
     the second of ``ends``.  ``centre`` and ``radius``
     are those of the path for round ones.  ``side`` is +1 where the material stands left of the feed, -1 right, 0 both.
-    ``normal`` points into the material of a straight wall.  ``cutter`` is the radius of the cutter there.
+    ``normal`` points into the material of a straight wall.  ``chain`` numbers
+    its contour.  ``cutter`` is the radius of the cutter there.
     """
 
     kind: str
@@ -61,6 +62,7 @@ class Shape:
     radius: float = 0.0
     side: int = 0
     normal: Point = (0.0, 0.0)
+    chain: int = 0
 
 
 @dataclass(frozen=True, slots=True)

@@ -128,15 +128,16 @@ def _chord_circles(path: Path, feed: Flags) -> Iterator[_Group]:
 
 def _fitted(path: Path, first: int, last: int, turn: Floats, sense: int) -> Iterator[_Group]:
     """The last turn of a run of chords, if its corners lie on a circle and it closes."""
-    turned = np.cumsum(np.abs(turn[first + 1 : last][::-1]))
-    count = int(np.searchsorted(turned, TURN - CHORD_TURN)) + 2
+    turned = np.abs(turn[first + 1 : last][::-1])
+    # one chord more than its corners turn
+    count = int(np.searchsorted(np.cumsum(turned), TURN - 1.25 * float(np.median(turned)))) + 2
     if count > last - first or count < FEWEST_CHORDS:
         return
     moves = list(range(last - count, last))
     points = path.end[moves, :2]
     centre, radius = _fit_circle(points)
     off = np.abs(np.hypot(points[:, 0] - centre[0], points[:, 1] - centre[1]) - radius)
-    closes = math.dist(path.start[moves[0], :2], path.end[moves[-1], :2]) < 2.0 * float(path.length[moves].max())
+    closes = math.dist(path.start[moves[0], :2], path.end[moves[-1], :2]) < 1.5 * float(path.length[moves].max())
     if off.max() < OFF_CIRCLE and closes:
         yield _Group(moves, centre, radius, sense)
 
@@ -213,7 +214,8 @@ def _shape(
     depth = float(path.end[moves[-1], 2])
     first, last = (tuple(map(float, place)) for place in (path.start[moves[0], :2], path.end[moves[-1], :2]))
     ends = (first[0], first[1]), (last[0], last[1])
-    return Shape(kind, tuple(moves), lines, ends, float(radius[moves[-1]]), depth, centre, ring, side, normal)
+    cutter, chain = float(radius[moves[-1]]), int(path.chain[moves[-1]])
+    return Shape(kind, tuple(moves), lines, ends, cutter, depth, centre, ring, side, normal, chain)
 
 
 def _deepest(found: Iterable[Shape]) -> list[Shape]:

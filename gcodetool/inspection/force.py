@@ -187,7 +187,9 @@ def _ratio(axis: Axis, force: Floats, way: Floats, friction: float, preload: flo
         return _over(pushed, np.full(len(force), friction)), np.where(moving, way, np.sign(force))
     if axis.stiff_side is not None:
         soft = -float(axis.stiff_side)
-        return _over(np.maximum(force * soft, 0.0), preload + friction * way * soft, moving), np.full(len(force), soft)
+        # friction helps where the axis moves to its soft side, or stands; it works with the cut where it moves away
+        threshold = preload + friction * np.where(moving, way * soft, 1.0)
+        return _over(np.maximum(force * soft, 0.0), threshold, moving), np.full(len(force), soft)
     ahead = _over(
         np.maximum(np.where(moving, force * way, np.abs(force)), 0.0), np.full(len(force), preload + friction)
     )

@@ -135,14 +135,9 @@ def flips(path: Path, cutters: Cutters, samples: Samples, by_sample: Ints) -> li
     radius = cutters.radius[path.tool[samples.move]]
     one_sided = (by_sample == Label.CLIMB) | (by_sample == Label.CONVENTIONAL)
     keep = np.flatnonzero(one_sided & ~path.rapid[samples.move])
-    if not len(keep):
-        return []
     travelled = np.cumsum(samples.weight)
     for _ in range(2):
-        move, label = samples.move[keep], by_sample[keep]
-        change = (label[1:] != label[:-1]) | (path.chain[move[1:]] != path.chain[move[:-1]])
-        run = np.cumsum(np.concatenate([[True], change])) - 1
-        keep = keep[np.bincount(run, samples.weight[keep])[run] >= SHORT * radius[keep]]
+        keep = keep[_run_lengths(path, samples, by_sample, keep) >= SHORT * radius[keep]]
     before, after = keep[:-1], keep[1:]
     same = path.chain[samples.move[before]] == path.chain[samples.move[after]]
     near = travelled[after] - samples.weight[after] - travelled[before] < 2.0 * radius[before]
@@ -151,6 +146,17 @@ def flips(path: Path, cutters: Cutters, samples: Samples, by_sample: Ints) -> li
         (int(samples.move[a]), int(samples.move[b]), Label(int(by_sample[a])), Label(int(by_sample[b])))
         for a, b in zip(before[place], after[place], strict=True)
     ]
+
+
+def _run_lengths(path: Path, samples: Samples, by_sample: Ints, keep: Ints) -> Floats:
+    """For each of these samples the length of the stretch of one label in one contour to which it belongs."""
+    if not len(keep):
+        return np.empty(0)
+    chain, label = path.chain[samples.move[keep]], by_sample[keep]
+    change = (label[1:] != label[:-1]) | (chain[1:] != chain[:-1])
+    run = np.cumsum(np.concatenate([[True], change])) - 1
+    found: Floats = np.bincount(run, samples.weight[keep])[run]
+    return found
 
 
 def word_of(labels: Labels, move: int) -> str:

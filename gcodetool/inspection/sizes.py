@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import shapely
@@ -18,7 +18,7 @@ import shapely
 from gcodetool.inspection.audit_records import Feature, Shape
 from gcodetool.inspection.cutting_records import Flags, Floats, Holding, Ints, Path, Samples
 from gcodetool.inspection.lash_path import AxisCase, AxisState, follow, states_before
-from gcodetool.inspection.spacing import drag_words, hole_pairs, measure, widths
+from gcodetool.inspection.spacing import Wall, drag_words, hole_pairs, measure, widths
 from gcodetool.inspection.toolpath import places
 from gcodetool.machine import Axis, Machine
 
@@ -112,7 +112,7 @@ class Predictor:
 def predict(shapes: Sequence[Shape], predictor: Predictor) -> list[Feature]:
     """The measures of every shape, worst first."""
     found: list[Feature] = []
-    walls: list[tuple[Shape, list[float], bool]] = []
+    walls: list[Wall] = []
     for shape in shapes:
         if shape.kind in ("bore", "boss"):
             found.append(_round(shape, predictor))
@@ -121,33 +121,48 @@ def predict(shapes: Sequence[Shape], predictor: Predictor) -> list[Feature]:
         elif shape.kind in ("wall", "slot"):
             feature, place, dragged = _wall(shape, predictor)
             found.append(feature)
-            walls.append((shape, place, dragged))
-    found.extend(widths([each for each in walls if each[0].kind == "wall"][:MOST_WALLS]))
+            walls.extend(_both_walls(shape, place, dragged) if shape.kind == "slot" else [(shape, place, dragged)])
+    found.extend(widths(walls[:MOST_WALLS]))
     holes = [shape for shape in shapes if shape.kind == "hole"][:MOST_HOLES]
     found.extend(hole_pairs(holes, [predictor.ends(shape.moves[-1]) for shape in holes]))
     return sorted(found, key=lambda feature: (-feature.worst, feature.lines))
 
 
-def _stretch(shape: Shape, path: Path) -> tuple[Ints, Floats]:
-    """Samples along the moves of a shape: quadrant points and even steps."""
-    moves, shares = [], []
+def _stretch(shape: Shape, predictor: Predictor) -> tuple[Ints, Floats]:
+    """Samples along the moves of a shape: even steps, quadrant points, and the ends of the flats after them."""
+    path, moves, shares = predictor.path, [], []
     for k in shape.moves:
         sweep = float(path.sweep[k]) if path.plane[k] == 1 else 0.0
         count = max(LEAST_SAMPLES if len(shape.moves) < 12 else 4, math.ceil(PER_TURN * abs(sweep) / (2.0 * math.pi)))
         share = np.linspace(0.0, 1.0, count + 1)
         if sweep:
-            quadrant = (np.arange(-40, 41) * 0.5 * math.pi - path.angle[k]) / sweep
-            share = np.union1d(share, quadrant[(quadrant > 0.0) & (quadrant < 1.0)])
+            special = (_special_angles(float(path.radius[k]), sweep, predictor) - path.angle[k]) / sweep
+            share = np.union1d(share, special[(special > 0.0) & (special < 1.0)])
         moves.append(np.full(len(share), k, np.int64))
         shares.append(share)
     return np.concatenate(moves), np.concatenate(shares)
+
+
+def _special_angles(radius: float, sweep: float, predictor: Predictor) -> Floats:
+    """Quadrant points, and the angles acos(1 - B/R) past them at which an axis with lash B left gets into contact."""
+    quadrants = np.arange(-40, 41) * 0.5 * math.pi
+    left = {case.axes[letter].lash - (case.axes[letter].compensated or 0.0) for case in predictor.cases for letter in PLAN}
+    past = [math.acos(1.0 - lash / radius) for lash in left if 0.0 < lash < radius]
+    return np.concatenate([quadrants, *(quadrants + math.copysign(delta, sweep) for delta in past)])
+
+
+def _both_walls(shape: Shape, place: Sequence[float], dragged: bool) -> list[Wall]:
+    """The two walls of a slot, each with the place of its surface along its own normal."""
+    (nx, ny), half = shape.normal, shape.cutter
+    other = replace(shape, normal=(-nx, -ny))
+    return [(shape, [each + half for each in place], dragged), (other, [half - each for each in place], dragged)]
 
 
 # ---- round ones -----------------------------------------------------------------------------------------------------
 
 
 def _round(shape: Shape, predictor: Predictor) -> Feature:
-    move, share = _stretch(shape, predictor.path)
+    move, share = _stretch(shape, predictor)
     wanted, actual, dragged = predictor.paths(move, share)
     last = _last_turn(wanted, shape)
     sign = 1.0 if shape.kind == "bore" else -1.0
@@ -197,8 +212,8 @@ class _Ring:
         points = shapely.get_coordinates(self._wall)
         if not len(points):
             return 0.0
-        radius = np.hypot(points[:, 0] - self._middle[0], points[:, 1] - self._middle[1])
-        return float(radius.max() - radius.min())
+        largest = float(np.hypot(points[:, 0] - self._middle[0], points[:, 1] - self._middle[1]).max())
+        return largest - float(shapely.distance(shapely.Point(self._middle), shapely.boundary(self._wall)))
 
 
 def _flat(radius: float, case: AxisCase) -> float:
@@ -208,7 +223,7 @@ def _flat(radius: float, case: AxisCase) -> float:
 
 
 def _arc(shape: Shape, predictor: Predictor) -> Feature:
-    move, share = _stretch(shape, predictor.path)
+    move, share = _stretch(shape, predictor)
     wanted, actual, dragged = predictor.paths(move, share)
     ray = wanted - np.array(shape.centre)
     ray /= np.maximum(np.hypot(ray[:, 0], ray[:, 1]), 1e-12)[:, None]
@@ -228,7 +243,7 @@ def _arc(shape: Shape, predictor: Predictor) -> Feature:
 
 def _wall(shape: Shape, predictor: Predictor) -> tuple[Feature, list[float], bool]:
     """Where a wall (or the middle of a slot) comes out, and how much it bends; with the place in each case."""
-    move, share = _stretch(shape, predictor.path)
+    move, share = _stretch(shape, predictor)
     wanted, actual, dragged = predictor.paths(move, share)
     normal = np.array(shape.normal)
     off = [((part - wanted) * normal).sum(axis=1) for part in actual]

@@ -32,29 +32,39 @@ def drag_words(dragged: bool) -> str:
 
 
 def widths(walls: Sequence[Wall]) -> Iterator[Feature]:
-    """Pockets and ribs: each wall with the nearest wall across the air before it, and across the material behind it.
+    """Pockets and ribs: each wall with the nearest one across the air before it, and across the material behind it.
 
-    With both normals pointing into the material, the sum of the two places is the width of a pocket, or minus that of
-    a rib.
+    Neighbours are looked for in the same contour, and once more among all.  With both normals pointing into the
+    material, the sum of the two places is the width of a pocket, or minus that of a rib.
     """
     if len(walls) < 2:
         return
     normal = np.array([shape.normal for shape, _, _ in walls])
     meant = np.array([_meant(shape) for shape, _, _ in walls])
+    chain = np.array([shape.chain for shape, _, _ in walls])
     opposite = normal @ normal.T < -math.cos(PARALLEL)
     between = np.where(opposite, meant[:, None] + meant[None, :], np.nan)
+    same = np.where(chain[:, None] == chain[None, :], between, np.nan)
     done: set[tuple[int, int]] = set()
-    for k in range(len(walls)):
-        for sign in (1.0, -1.0):
-            order = np.argsort(np.where(sign * between[k] > 1e-6, np.abs(between[k]), np.inf), kind="stable")
-            for j in order.tolist():
-                if not sign * between[k, j] > 1e-6:
-                    break
-                if _facing(walls[k][0], walls[j][0]):
-                    if (min(j, k), max(j, k)) not in done:
-                        done.add((min(j, k), max(j, k)))
-                        yield _width(walls[k], walls[j], float(between[k, j]))
-                    break
+    for table in (same, between):
+        for k in range(len(walls)):
+            for sign in (1.0, -1.0):
+                j = _partner(walls, k, sign * table[k])
+                pair = min(j, k), max(j, k)
+                if j >= 0 and pair not in done:
+                    done.add(pair)
+                    yield _width(walls[k], walls[j], float(table[k, j]))
+
+
+def _partner(walls: Sequence[Wall], k: int, distance: Floats) -> int:
+    """The nearest wall that faces wall k at a positive distance, -1 where there is none or it is of the same slot."""
+    order = np.argsort(np.where(distance > 1e-6, distance, np.inf), kind="stable")
+    for j in order.tolist():
+        if not distance[j] > 1e-6:
+            return -1
+        if _facing(walls[k][0], walls[j][0]):
+            return -1 if walls[k][0].moves == walls[j][0].moves else j
+    return -1
 
 
 def _meant(shape: Shape) -> float:

@@ -62,6 +62,7 @@ def arc(run: Running, command: Command) -> None:
     plane = PLANE_AXES[command.after.plane][:2]
     if all(run.axes[letter].idle for letter in (*plane, *goal)):
         # nothing to shift; the geometry is not needed and may not even be known
+        run.note_decimals(command)
         for letter, target in goal.items():
             axis = run.axes[letter]
             axis.land(target, 0, axis.framed or command.after.distance == "G90")
@@ -102,6 +103,8 @@ def _write(task: _Task) -> None:
         pieces = cut_long(pieces, task.move.arc.sweep)
     if len(pieces) > 1:
         task = replace(task, places=_places(task))
+        for letter in (*task.plane, *task.goal):
+            run.axes[letter].decimals = max(run.axes[letter].decimals, task.places)
     texts = run.reseat(command)
     texts += _take_up(task, pieces[0], first=True, in_air=not texts)
     last: list[Word] = []
@@ -116,6 +119,7 @@ def _write(task: _Task) -> None:
         else:
             texts.append(_next(task, piece, end, last if piece.end == 1.0 else []))
         _arrive(task, end, piece.sides)
+    run.note_decimals(command)
     _finish(task, cut)
     run.tally.splits += len(pieces) - 1
     run.put(command, texts, task.plane)

@@ -40,8 +40,6 @@ def cycle(run: Running, drilling: Drilling, command: Command) -> None:
         _words_only(run, command)
         return
     plane = PLANE_AXES[command.after.plane]
-    for letter, index in command.shape.axes:
-        run.note_decimals(run.axes[letter], command.pieces[index])
     _check_rotary(command, plane)
     height = run.axes[plane[2]].position
     asked = read_cycle(command, drilling.sticky, height)
@@ -51,6 +49,7 @@ def cycle(run: Running, drilling: Drilling, command: Command) -> None:
     if before:
         pieces = _respelled(run, command, asked, pieces, drilling)
     pieces = run.with_feed(command, pieces)
+    run.note_decimals(command)
     _leave(run, command, asked, sides)
     run.put(command, [*before, join_words(pieces)])
 
@@ -299,9 +298,8 @@ def probe(run: Running, command: Command) -> None:
     run.out.close()
     absolute = command.after.distance == "G90"
     texts = run.reseat(command)
-    for letter, index in command.shape.axes:
+    for letter, _ in command.shape.axes:
         axis = run.axes[letter]
-        run.note_decimals(axis, command.pieces[index])
         value = command.quanta(letter)
         way = value - axis.position if absolute else value
         if absolute and not axis.framed:

@@ -32,8 +32,7 @@ class AxisKnowledge:
 
     ``adrift`` is true where the shift in force does not belong to the side (after a drilling cycle has come back in
     air). ``shift`` is the command minus the wanted position as last written, None where it is not known.  ``extreme``
-    is the farthest position on the present side (see ``play.advance``).  ``decimals`` is the most that a word of this
-    axis has had.
+    is the farthest position on the present side (see ``play.advance``).  ``decimals`` are those of the position.
     """
 
     __slots__ = (

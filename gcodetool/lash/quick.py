@@ -62,12 +62,16 @@ class Quick:
                 letters = join(pieces[1::3])
                 plan = plans[letters] if letters in plans else self._new_plan(letters)
                 gaps = join(pieces[::3])
-                if plan is not None and (not gaps or gaps.isspace()) and take(block, pieces, plan):
-                    text = join(pieces) + block.ending
+                before = None
+                if plan is not None and (not gaps or gaps.isspace()):
+                    before = take(block, pieces, plan)
+                if plan is not None and before is not None:
+                    text = before + join(pieces) + block.ending
                     if out.slot is None:
                         out.write(text)
                     else:
-                        out.put(text, plan.letters)
+                        # an arc moves both axes of its plane, whichever it has words of
+                        out.put(text, plan.letters + (PLANE_AXES[run.state.plane][:2] if plan.centre else ()))
                     if run.state.motion == "G0":
                         run.open_slot(run.state, pieces, block.ending)
                     continue
@@ -104,9 +108,7 @@ class Quick:
             at = {letter: 3 * k + 2 for k, letter in enumerate(upper)}
             axes = tuple((self._track(letter), at[letter]) for letter in "XYZABC" if letter in at)
             centre = {letter: at[letter] for letter in "IJK" if letter in at}
-            # an arc moves both axes of its plane, whichever it has words of
-            moved = "XYZ" if centre else "".join(track.axis.letter for track, _ in axes)
-            plan = _Plan(at.get("G", 0), at.get("F", 0), axes, centre, tuple(moved))
+            plan = _Plan(at.get("G", 0), at.get("F", 0), axes, centre, tuple(track.axis.letter for track, _ in axes))
         if len(self._plans) > 4096:
             self._plans.clear()
         self._plans[letters] = plan
@@ -119,53 +121,56 @@ class Quick:
             track.read(self._inch, self._run.machine.decimals)
         return track
 
-    def _take(self, block: Block, pieces: list[str], plan: _Plan) -> bool:
-        """Shift the words and say True, or leave everything as it is and say False."""
+    def _take(self, block: Block, pieces: list[str], plan: _Plan) -> str | None:
+        """Shift the words and give the line to write before them ("" for none), or None, with nothing changed."""
         run = self._run
         state = run.state
         g, f, axes, centre, _ = plan
         motion = _MOTIONS.get(pieces[g]) if g else state.motion
         if motion is None or (centre and motion < "G2") or (motion >= "G2" and not centre):
-            return False
+            return None
         if not f and run.feed_written != run.feed and run.feed_written is not None and motion != "G0":
-            return False
+            return None
         targets = _targets(pieces, axes)
         if targets is None:
-            return False
+            return None
         found, turning = targets
         if centre and not self._is_plain_arc(pieces, centre, found, state, motion):
-            return False
-        if turning and motion != "G0" and not self._may_turn(motion, g):
-            return False
-        if f:
-            run.feed = pieces[f].lstrip()
+            return None
+        before = ""
         if turning and motion != "G0":
-            self._take_up(block, pieces, turning)
+            here = [track for track in turning if not run.out.takes(track.axis.letter)]
+            if run.machine.take_up_feed is not None or (here and not g and motion != "G1"):
+                return None
+            if f:
+                run.feed = pieces[f].lstrip()
+            before = self._take_up(block, pieces, turning, here)
         if f:
-            run.feed_written = run.feed
+            run.feed = run.feed_written = pieces[f].lstrip()
         if motion != state.motion:
             run.state = step(state, g_words((pieces[g],)))
         self._shift(pieces, axes, found)
-        return True
+        return before
 
-    def _may_turn(self, motion: str, g: int) -> bool:
-        """True where a take-up needs no slot, no feed of its own, and no motion word to be said again."""
-        run = self._run
-        return run.out.slot is None and run.machine.take_up_feed is None and bool(g or motion == "G1")
-
-    def _take_up(self, block: Block, pieces: list[str], turning: list[Track]) -> None:
-        """Write the take-up line before a feed that turns these axes."""
+    def _take_up(self, block: Block, pieces: list[str], turning: list[Track], here: list[Track]) -> str:
+        """Turn these axes: in the slot those that it takes, the others (``here``) by the line that is returned."""
         run = self._run
         words: list[Word] = [("G", "1")]
         for track in turning:
+            axis = track.axis
             track.tell(self._inch)
-            number = run.number_at(track.axis, run.state, -track.side, pieces[track.index_in(pieces)])
-            words.append((track.axis.letter, number))
+            like = pieces[track.index_in(pieces)]
+            if track in here:
+                words.append((axis.letter, run.number_at(axis, run.state, -track.side, like)))
+            else:
+                run.take_up_in_slot(block.number, axis, -track.side, like)
+        if not here:
+            return ""
         if run.feed is not None and run.feed != run.feed_written:
             words.append(("F", run.feed))
-        run.count(block.number, run.state, [track.axis for track in turning], True, run.feed)
+        run.count(block.number, run.state, [track.axis for track in here], True, run.feed)
         look = look_of(pieces, "".join(pieces[1::3]).islower(), run.usual_blank)
-        run.out.write(new_line(words, look) + (block.ending or run.usual_ending))
+        return new_line(words, look) + (block.ending or run.usual_ending)
 
     def _is_plain_arc(
         self, pieces: list[str], centre: dict[str, int], found: _Found, state: ModalState, motion: str
@@ -187,7 +192,8 @@ class Quick:
         scale = 25.4 if self._inch else 1.0
         if abs(math.hypot(*u) - math.hypot(*v)) * scale > LOOSEST_MISMATCH_MM:
             return False
-        ways = in_one_quadrant(u, (v[0], v[1]), motion == "G3")
+        least = 0.25 * min((t.ripple for t in tracks if t.side != ANY_SIDE), default=0.0)
+        ways = in_one_quadrant(u, (v[0], v[1]), motion == "G3", least)
         sides = {track: side for track, side, _, _ in found}
         return ways is not None and all(
             t.placed and sides.get(t, t.side) in (ANY_SIDE, way) for t, way in zip(tracks, ways, strict=True)

@@ -140,9 +140,16 @@ class Running:
         axis.shift = base + count * digit[places]
         return digits(count, places, like)
 
-    def note_decimals(self, axis: AxisKnowledge, text: str) -> None:
-        """Keep the most decimals seen, so that a take-up repeats a position exactly."""
-        axis.decimals = max(axis.decimals, decimals_of(text))
+    def note_decimals(self, command: Command) -> None:
+        """At the end of a motion: keep the decimals of each position, so that a take-up repeats it exactly.
+
+        In G91 they are the most that were seen.
+        """
+        absolute = command.after.distance == "G90"
+        for letter, index in command.shape.axes:
+            axis = self.axes[letter]
+            decimals = decimals_of(command.pieces[index])
+            axis.decimals = decimals if absolute else max(axis.decimals, decimals)
 
     # ---- take-ups -------------------------------------------------------------------------------------------------
 
@@ -155,7 +162,7 @@ class Running:
         for letter, side in sides.items():
             axis = self.axes[letter]
             if in_air and self.out.takes(letter) and self._slot_can_say(axis) and not command.deletable:
-                self._take_up_in_slot(command, axis, side)
+                self.take_up_in_slot(command.block.number, axis, side, self._like(command, axis))
             else:
                 here[letter] = side
         if not here:
@@ -178,11 +185,12 @@ class Running:
     def _slot_can_say(self, axis: AxisKnowledge) -> bool:
         return self.out.slot is not None and (axis.framed or self.out.slot.state.distance == "G91")
 
-    def _take_up_in_slot(self, command: Command, axis: AxisKnowledge, side: int) -> None:
+    def take_up_in_slot(self, line: int, axis: AxisKnowledge, side: int, like: str) -> None:
+        """Cross the lash of an axis in the slot, for a source line that needs it later."""
         slot = self.out.slot
         assert slot is not None
-        self.out.take((axis.letter, self.number_at(axis, slot.state, side, self._like(command, axis))))
-        self.count(command.block.number, command.after, [axis], False, None)
+        self.out.take((axis.letter, self.number_at(axis, slot.state, side, like)))
+        self.count(line, slot.state, [axis], False, None)
 
     def _take_up_here(self, command: Command, sides: Mapping[str, int], state: ModalState) -> str:
         words: list[Word] = []

@@ -33,8 +33,7 @@ def targets(run: Running, command: Command) -> dict[str, int]:
     """Target of each axis word, quanta, in the frame of the axis."""
     absolute = command.after.distance == "G90"
     found = {}
-    for letter, index in command.shape.axes:
-        run.note_decimals(run.axes[letter], command.pieces[index])
+    for letter, _ in command.shape.axes:
         value = command.quanta(letter)
         found[letter] = value if absolute else run.axes[letter].position + value
     return found
@@ -115,6 +114,7 @@ def _shift_words(run: Running, command: Command, sides: Mapping[str, int]) -> li
 
 def _arrive(run: Running, command: Command, goal: Mapping[str, int], sides: Mapping[str, int]) -> None:
     absolute = command.after.distance == "G90"
+    run.note_decimals(command)
     for letter, target in goal.items():
         axis = run.axes[letter]
         if axis.side and (axis.framed or not absolute):

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 from gcodetool.lash.knowledge import AxisKnowledge
 from gcodetool.program.numbers import INCH_DIGIT, MM_DIGIT, QUANTA_PER_MM, decimals_of, digits, to_quanta
 
@@ -63,7 +65,7 @@ class Track:
         if not self.last:
             return
         axis.position = axis.extreme = to_quanta(self.last, INCH_DIGIT if in_inches else MM_DIGIT)
-        axis.decimals = max(axis.decimals, decimals_of(self.last))
+        axis.decimals = decimals_of(self.last)
         axis.shift = axis.shifts[in_inches][axis.side]
         axis.framed = True
         self.last = ""
@@ -74,12 +76,19 @@ class Track:
         return next(i + 1 for i in range(1, len(pieces), 3) if pieces[i] in (upper, lower))
 
 
-def in_one_quadrant(u: tuple[float, float], v: tuple[float, float], counter: bool) -> tuple[int, int] | None:
-    """The way of each plane axis on an arc from ``u`` to ``v`` about the origin; None unless in one quadrant."""
+def in_one_quadrant(
+    u: tuple[float, float], v: tuple[float, float], counter: bool, least: float
+) -> tuple[int, int] | None:
+    """The way of each plane axis on an arc from ``u`` to ``v`` about the origin; None unless in one quadrant.
+
+    An end that misses a quadrant point by so little that the other axis moves less than ``least`` beyond it counts as
+    being there.
+    """
+    small = max(_ZERO, math.sqrt(2.0 * math.hypot(*u) * least))
     signs = []
     for k in (0, 1):
-        begin = 0.0 if abs(u[k]) < _ZERO else u[k]
-        end = 0.0 if abs(v[k]) < _ZERO else v[k]
+        begin = 0.0 if abs(u[k]) < small else u[k]
+        end = 0.0 if abs(v[k]) < small else v[k]
         if begin * end < 0.0 or begin == end:
             return None
         signs.append(1 if begin + end > 0.0 else -1)

@@ -1,4 +1,4 @@
-"""What the documentation takes from the product: help of every command, the code table, refusals, exit codes, sheet keys."""
+"""What the documentation takes from the product: the help of every command, the code table, refusals."""
 
 from __future__ import annotations
 
@@ -53,7 +53,7 @@ def _help_page(name: str, command: Any) -> str:
     rows += [(_spelled(p), p.help or "", p) for p in options(command)]
     if rows:
         lines += ["| argument or option | what it does |", "|---|---|"]
-        lines += [f"| `{spelled.replace('|', chr(92) + '|')}` | {_cell(text)}{_limits(p)} |" for spelled, text, p in rows]
+        lines += [f"| `{_cell(spelled)}` | {_cell(text)}{_limits(p)} |" for spelled, text, p in rows]
         lines.append("")
     return "\n".join(lines)
 

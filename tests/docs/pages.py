@@ -125,7 +125,7 @@ class Workshop:
         }
 
     def run(self, block: str) -> str:
-        """Run the lines of one block in order; what they print.  A code other than the one stated is an AssertionError."""
+        """Run the lines of one block in order; what they print.  AssertionError for another code than is stated."""
         printed = []
         for line in filter(None, block.splitlines()):
             stated = _CODE.search(line)

@@ -72,7 +72,7 @@ def test_every_command_is_shown_at_work() -> None:
             assert f"{name} " in told, name
 
 
-# ---- the README's two commands ----------------------------------------------------------------------------------------
+# ---- the README's two commands -------------------------------------------------------------------------------------
 
 
 def readme_steps(name: str) -> list[str]:
@@ -108,11 +108,12 @@ def test_what_the_readme_commands_leave_behind_is_ignored() -> None:
         assert subprocess.run(["git", "check-ignore", "-q", left], cwd=ROOT, check=False).returncode == 0, left
 
 
-# ---- the contributors' guide -------------------------------------------------------------------------------------------
+# ---- the contributors' guide ---------------------------------------------------------------------------------------
 
 
 def test_files_that_the_guide_names_are_there() -> None:
-    named = re.findall(r"[ `]((?:gcodetool|tests|fixtures|docs|\.ci)/[\w./]*)(?:::(\w+))?", read(BY_NAME["DEVELOPERS.md"]))
+    path_and_test = r"[ `]((?:gcodetool|tests|fixtures|docs|\.ci)/[\w./-]*)(?:::(\w+))?"
+    named = re.findall(path_and_test, read(BY_NAME["DEVELOPERS.md"]))
     assert len(named) > 30
     for path, test in named:
         assert (ROOT / path).exists(), path
