@@ -108,6 +108,15 @@ def nearest(pieces: Sequence[Piece], point: Vector, line: int) -> Gap:
 
 def _from_line(piece: Piece, point: Vector) -> Vector:
     """Vector from the nearest place of a straight piece to a point."""
+    start, end = piece.start, piece.end
+    if start[3:] == end[3:]:
+        # no rotary axis turns, as nearly always: the same sum without the loops
+        wx, wy, wz = end[0] - start[0], end[1] - start[1], end[2] - start[2]
+        ox, oy, oz = point[0] - start[0], point[1] - start[1], point[2] - start[2]
+        square = wx * wx + wy * wy + wz * wz
+        share = min(max((wx * ox + wy * oy + wz * oz) / square, 0.0), 1.0) if square else 0.0
+        rest = point[3] - start[3], point[4] - start[4], point[5] - start[5]
+        return (ox - share * wx, oy - share * wy, oz - share * wz, *rest)
     way = [b - a for a, b in zip(piece.start, piece.end, strict=True)]
     offset = [p - a for p, a in zip(point, piece.start, strict=True)]
     square = sum(w * w for w in way)
@@ -146,8 +155,16 @@ def _walk(first: Sequence[Piece], second: Sequence[Piece]) -> Gap | None:
     worst = _apart(first[0].start, second[0].start, first[0], second[0])
     i = j = 0
     swept = 0.0
+    level = worst.distance <= SURE
     while i < len(first) and j < len(second):
         piece, part = first[i], second[j]
+        if level and piece.arc is None and part.arc is None:
+            # two lines that begin together and end together are nowhere farther apart than at their ends
+            ends = _apart(piece.end, part.end, piece, part)
+            if ends.distance <= SURE:
+                worst = worst.wider(ends)
+                i, j = i + 1, j + 1
+                continue
         for share in (0.25, 0.5, 0.75, 1.0) if part.arc else (0.5, 1.0):
             worst = worst.wider(nearest(first[max(0, i - 1) : i + 2], part.point(share), part.line))
         if worst.distance > ALIKE:
@@ -158,6 +175,7 @@ def _walk(first: Sequence[Piece], second: Sequence[Piece]) -> Gap | None:
         if on_i:
             worst = worst.wider(_end_gap(piece, second[max(0, j - 1) : j + 2]))
             swept = 0.0
+        level = bool(on_i and on_j) and math.dist(piece.end, part.end) <= SURE
         i, j = i + on_i, j + on_j
     for part in second[j:]:
         worst = worst.wider(nearest(first[-1:], part.end, part.line))

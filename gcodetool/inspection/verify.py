@@ -245,7 +245,7 @@ def _uncompensated(blocks: Iterable[Block], machine: Machine, setup: Setup, stat
         want, have = intended(item), list(follower.drive(item))
         if not item.rapid:
             for piece in have:
-                for share in (0.5, 1.0):
+                for share in (0.5, 1.0) if piece.arc or want.arc else (1.0,):
                     worst = worst.wider(nearest([*before, want], piece.point(share), piece.line))
         if before and not before[0].rapid:
             worst = worst.wider(nearest([*before_actual, *have], before[0].end, before[0].line))

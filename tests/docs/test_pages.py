@@ -120,6 +120,14 @@ def test_files_that_the_guide_names_are_there() -> None:
         assert not test or f"def {test}(" in read(ROOT / path), test
 
 
+def test_modules_that_the_guide_starts_are_there() -> None:
+    started = re.findall(r"python -m (tests[\w.]*)", read(BY_NAME["DEVELOPERS.md"]))
+    assert "tests.docs" in started
+    for module in started:
+        path = ROOT / module.replace(".", "/")
+        assert path.with_suffix(".py").is_file() or (path / "__main__.py").is_file(), module
+
+
 def test_every_layer_is_in_the_guide() -> None:
     from tests.test_layers import ROWS
 

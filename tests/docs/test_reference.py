@@ -79,7 +79,7 @@ def keys_of(value: Any, path: str = "") -> Iterator[str]:
         for key, inner in value.items():
             name = "*" if key in list("XYZABC") else key
             yield from keys_of(inner, f"{path}.{name}".lstrip("."))
-    elif isinstance(value, list) and any(isinstance(entry, dict) for entry in value):
+    elif isinstance(value, list) and all(isinstance(entry, dict) for entry in value):
         for entry in value:
             yield from keys_of(entry, f"{path}[]")
     else:

@@ -46,7 +46,10 @@ def word(line: str, letter: str) -> Decimal | None:
         # Z along the arc
         ("G2 X10 Y10 Z-3 I10 F100", "G1 X0.1000 Y0.1000 F100\nG2 X10.1000 Y10.1000 Z-3 I10 F100"),
         # a word that is left out because it does not change
-        ("G1 X-5 F100\nG3 Y-10 J-5", "G1 X-5 F100\nG3 Y-5.0000 J-5 X-10.0000\nG1 X-9.9000\nG3 X-4.9000 Y-10.0000 I5.0000 J0.0000"),
+        (
+            "G1 X-5 F100\nG3 Y-10 J-5",
+            "G1 X-5 F100\nG3 Y-5.0000 J-5 X-10.0000\nG1 X-9.9000\nG3 X-4.9000 Y-10.0000 I5.0000 J0.0000",
+        ),
     ],
 )
 def test_arcs_that_are_not_cut(program: str, expected: str) -> None:

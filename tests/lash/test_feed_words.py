@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import re
 
 import pytest
@@ -30,13 +31,19 @@ def rewritten(program: str, lash: dict[str, str] = LASH, head: str = "G21 G90", 
     [
         # a feed of its own, then the program's
         ("G1 X5 F100", "G1 X0.1000 F50\nG1 X5.1000 F100"),
-        ("G1 X5 F100\nX2\nX3", "G1 X0.1000 F50\nG1 X5.1000 F100\nG1 X5.0000 F50\nX2 F100\nG1 X2.1000 F50\nX3.1000 F100"),
+        (
+            "G1 X5 F100\nX2\nX3",
+            "G1 X0.1000 F50\nG1 X5.1000 F100\nG1 X5.0000 F50\nX2 F100\nG1 X2.1000 F50\nX3.1000 F100",
+        ),
         # said once for take-ups in a row is enough, and a block of the same feed needs no word
         ("G1 X5 F50\nX2", "G1 X0.1000 F50\nG1 X5.1000 F50\nG1 X5.0000\nX2"),
         # a word on a line of its own
         ("F100\nG1 X5\nF80\nX2\nY-1", "F100\nG1 X0.1000 F50\nG1 X5.1000 F100\nF80\nG1 X5.0000 F50\nX2 F80\nY-1"),
         # arcs
-        ("G2 X20 Y0 I10 F100", "G1 X0.1000 Y0.1000 F50\nG2 X10.1000 Y10.1000 I10 F100\nG1 Y10.0000 F50\nG2 X20.1000 Y0.0000 I0.0000 J-10.0000 F100"),
+        (
+            "G2 X20 Y0 I10 F100",
+            "G1 X0.1000 Y0.1000 F50\nG2 X10.1000 Y10.1000 I10 F100\nG1 Y10.0000 F50\nG2 X20.1000 Y0.0000 I0.0000 J-10.0000 F100",
+        ),
         # rapids in between do not ask for a feed
         ("G1 X5 F100\nX2\nG0 Y-1\nG1 Y-2", "G1 X0.1000 F50\nG1 X5.1000 F100\nG1 X5.0000 F50\nX2 F100\nG0 Y-1\nG1 Y-2"),
         # in air no feed is needed at all
@@ -75,7 +82,13 @@ def minutes(program: str) -> float:
 
 @pytest.mark.parametrize(
     "block",
-    ["G2 X20 Y0 I10 F2", "G2 X0 Y0 I10 F0.5", "G2 X10 Y-10 R-10 F4", "G3 X8 Y6 I-6 J8 F3.25", "G2 X0 Y0 I10 P3 Z-1 F1"],
+    [
+        "G2 X20 Y0 I10 F2",
+        "G2 X0 Y0 I10 F0.5",
+        "G2 X10 Y-10 R-10 F4",
+        "G3 X-16 Y8 I-6 J8 F3.25",
+        "G2 X0 Y0 I10 P3 Z-1 F1",
+    ],
 )
 def test_shares_of_a_split_block_add_up_to_its_time(block: str) -> None:
     original = f"G21 G90 G0 X0 Y0 Z5\nG93\n{block}\nG94\n"
@@ -108,4 +121,4 @@ def test_take_ups_in_feed_per_revolution_are_rapids() -> None:
     assert len(takes) == 4
     assert "F50" not in result.partition("G94")[0]
     lines = result.splitlines()
-    assert all(re.match(r"G[123]", after) for line, after in zip(lines, lines[1:], strict=False) if line in takes)
+    assert all(re.match(r"G[123]", after) for line, after in itertools.pairwise(lines) if line in takes)

@@ -118,8 +118,12 @@ FORMS = pytest.mark.parametrize(
 def test_slivers(plane: str, by_radius: bool, inch: bool, where: str) -> None:
     """Quarter, half and three-quarter turns both ways, 0, 1, 2 and 10 digits beside the quadrant points."""
     slivers = [
-        Sliver(first, (first + quarters) % 4, digits if where != "end" else 0, digits if where != "start" else 0, clockwise)
-        for first, quarters, digits, clockwise in product((0, 1), (1, 2, 3), DIGITS if where != "both" else (1, -2, 10), (False, True))
+        Sliver(
+            first, (first + quarters) % 4, digits if where != "end" else 0, digits if where != "start" else 0, clockwise
+        )
+        for first, quarters, digits, clockwise in product(
+            (0, 1), (1, 2, 3), DIGITS if where != "both" else (1, -2, 10), (False, True)
+        )
     ]
     hold_slivers([s for s in slivers if usable(s, by_radius)], plane, by_radius, inch)
 
