@@ -103,7 +103,7 @@ def command(
 
     found = audit(text, work, sheet, setup, name=label, every_move=listed)
     if as_json:
-        show(json.dumps(tables.as_json(found), indent=2))
+        show(*json.dumps(tables.as_json(found), indent=2).split("\n"))
     elif listed:
         _list(found)
     else:
@@ -122,7 +122,8 @@ def _show_materials() -> None:
 
 def _list(found: Audit) -> None:
     out = standard_output()
-    lines = [*(f"# {line}" for line in tables.basis_lines(found)), "\t".join(tables.MOVE_COLUMNS)]
+    remarks = (*tables.basis_lines(found), *found.cautions)
+    lines = [*(f"# {line}" for line in remarks), "\t".join(tables.MOVE_COLUMNS)]
     out.writelines(f"{line}\n".encode() for line in lines)
     out.writelines(("\t".join(tables.move_row(row)) + "\n").encode() for row in found.rows)
     out.flush()

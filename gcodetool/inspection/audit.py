@@ -64,7 +64,7 @@ def audit(
     envelope = tuple(limits.envelope(path, machine))
     found = [
         *findings.of_assumptions(path, job, machine, stock, power, cut, samples.move),
-        *findings.of_sense(path, job, marks, cut, samples.move),
+        *findings.of_sense(path, job, marks, engagement, cut),
         *_limit_findings(path, job, machine, stock, marks, engagement, cut),
         *findings.of_chip(path, job, marks, engagement, cut, power),
         *findings.of_holding(path, machine, marks, samples.move, holdings, force.advice),

@@ -35,7 +35,7 @@ Stands = Callable[[Floats, Floats, Floats], Flags]
 
 def shapes(path: Path, cutters: tuple[Cutter, ...], labels: Labels, stands: Stands) -> list[Shape]:
     """All shapes of a program, at most ``MOST_SHAPES``, the deepest of each only."""
-    radius = np.array([cutter.radius for cutter in cutters])[path.tool] if cutters else np.empty(0)
+    radius = np.array([cutter.radius for cutter in cutters] or [0.0])[path.tool]
     feed = ~path.rapid & ~path.turning
     walls = _Walls(path, radius, stands)
     found = [*_holes(path, radius, labels)]

@@ -22,7 +22,6 @@ from gcodetool.inspection.cutting_records import (
     Hold,
     Holding,
     Ints,
-    Kind,
     Label,
     Labels,
     Path,
@@ -186,16 +185,15 @@ def of_assumptions(
             )
 
 
-def of_sense(path: Path, job: Job, labels: Labels, cut: Cut, moves: Ints) -> Iterator[Finding]:
+def of_sense(path: Path, job: Job, labels: Labels, engagement: Engagement, cut: Cut) -> Iterator[Finding]:
     """2xx: spindle, hand, flips, spring passes."""
     cutting = np.zeros(path.count, np.bool_)
-    cutting[moves[cut.area > 0.0]] = True
-    cutting |= (labels.kind == Kind.PLUNGE) | (labels.kind == Kind.DRILL)
+    cutting[engagement.samples.move[(cut.area > 0.0) | (engagement.buried > 0.0)]] = True
     cutting &= ~path.rapid
     still = np.flatnonzero(cutting & (path.sense == 0))
     if len(still):
         yield finding(201, int(path.line[still[0]]), "the cutter meets material before M3 or M4", count=len(still))
-    hands = np.array([cutter.hand for cutter in job.cutters])[path.tool]
+    hands = np.array([cutter.hand for cutter in job.cutters] or [1])[path.tool]
     wrong = np.flatnonzero(cutting & (path.sense != 0) & (path.sense != hands))
     if len(wrong):
         word = "M4" if path.sense[wrong[0]] < 0 else "M3"

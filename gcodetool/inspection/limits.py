@@ -90,7 +90,7 @@ def keep_out_hits(path: Path, cutters: Sequence[Cutter], keep_outs: Sequence[Kee
     """The first move, rapid or feed, on which the cutter enters each keep-out area below its top."""
     if not keep_outs or not path.count:
         return []
-    radius = np.array([cutter.radius for cutter in cutters])[path.tool]
+    radius = np.array([cutter.radius for cutter in cutters] or [0.0])[path.tool]
     lowest = np.minimum(path.start[:, 2], path.end[:, 2])
     known = ~path.turning & ~(path.rapid & path.unplaced)
     found = []

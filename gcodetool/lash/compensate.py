@@ -7,6 +7,7 @@ and the few lines held for the slot are kept, so memory does not grow with the p
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable, Iterable
 
 from gcodetool.errors import Refusal
@@ -28,6 +29,7 @@ Mover = Callable[[Running, Command], None]
 MARK = "lash taken up by gcodetool"
 MEASURING = "gcodetool measure: run as it is, never compensate"
 _MARK_LINES = 50
+_LOOKS_LIKE_MOTION = re.compile(r"[^(;]*[Gg]0*[0-3](?!\d)[^(;]*[XYZxyz]")
 
 
 class Compensator:
@@ -54,7 +56,7 @@ class Compensator:
         self._header = header
         self._again = again
         self._ended = False
-        self._begun = False
+        self._live = False
 
     @property
     def tally(self) -> Tally:
@@ -77,7 +79,7 @@ class Compensator:
 
     def _is_open(self) -> bool:
         """True inside the program, with no mode in doubt."""
-        return self._begun and not self._ended and not self._doubt.fields
+        return self._live and not self._ended and not self._doubt.fields
 
     def _ordinary(self, block: Block) -> None:
         """One block, whatever it is."""
@@ -85,7 +87,7 @@ class Compensator:
         if block.ending:
             run.usual_ending = block.ending
         if self._ended:
-            run.out.put(block.text + block.ending)
+            self._pass_after_end(block)
             return
         if block.number <= _MARK_LINES and MARK in block.text and not self._again:
             reason = "this program has been rewritten for lash already"
@@ -95,18 +97,23 @@ class Compensator:
             raise Refusal(block.number, block.text.strip()[:60], reason, "Run it as it is")
         self._rewrite_block(block)
 
+    def _pass_after_end(self, block: Block) -> None:
+        """Text after the end is no part of the program, but a person may take it for one."""
+        if _LOOKS_LIKE_MOTION.match(block.text):
+            text = "text after the program's end passes as it is: a second program in the file is not rewritten"
+            self.tally.caution(text, block.number)
+        self.run.out.put(block.text + block.ending)
+
     def _rewrite_block(self, block: Block) -> None:
         run = self.run
         command = read_block(block, run.state)
         if not command.shape.at:
             self._without_words(command)
             return
-        if not self._begun:
-            self._begun = True
-            if set(command.shape.at) - {"O", "N"}:
-                self._write_header(block.text, block.ending)
-            else:
-                self._begun = False
+        if not self._live and set(command.shape.at) - {"O", "N"}:
+            # a program number or a lone line number is no code yet
+            self._live = True
+            self._write_header(block.text, block.ending)
         if command.deletable or self._doubt.fields:
             self._doubtful(command)
         else:
@@ -116,9 +123,8 @@ class Compensator:
         text = command.block.text
         if text.lstrip().startswith("%"):
             # the first tape mark opens the program, one after live code ends it
-            self._ended = self._begun
-        elif text.strip() and not self._begun:
-            self._begun = True
+            self._ended = self._live
+        elif text.strip():
             self._write_header(text, command.block.ending)
         self.run.out.put(text + command.block.ending)
 

@@ -146,7 +146,7 @@ CLAMP = KeepOut("left clamp", box(-45.0, 20.0, -35.0, 30.0), 10.0)
         ("G0 X-60 Y25 Z15\nG0 X40 Z5\n", None),  # over its edge while it goes down: 13 and more above it there
         ("G0 X-40 Y-40 Z15\nG0 Y40\n", None),  # above it
         ("G0 X-31.9 Y-40 Z15\nG0 Z5\nG1 Y40 F500\n", None),  # 3.1 beside it
-        ("G0 X-20 Y25 Z15\nG0 Z5\nG2 X-20 Y25 I-20 J0 F500\n", 6),  # an arc round its far side
+        ("G0 X-20 Y25 Z15\nG0 Z5\nG2 X-20 Y25 I-10 J0 F500\n", 6),  # an arc round its far side
     ],
 )
 def test_keep_out_areas(program: str, line: int | None) -> None:

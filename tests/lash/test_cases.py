@@ -99,7 +99,7 @@ def test_words_that_are_in_no_table_have_cases_too() -> None:
 def test_a_file_that_does_not_keep_to_the_form_is_told(tmp_path: Path, text: str) -> None:
     path = tmp_path / "x.case"
     path.write_text(text)
-    with pytest.raises(NotACase, match="x.case"):
+    with pytest.raises(NotACase, match=r"x\.case"):
         read_case(path)
 
 

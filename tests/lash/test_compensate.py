@@ -143,8 +143,8 @@ def test_the_worst_take_ups_are_those_that_stand_longest_in_the_cut() -> None:
     program = "G21 G90\nG0 X0 Y0\n" + "".join(f"G1 X{5 + k % 2} F{10 * (k + 1)}\n" for k in range(10))
     _, tally = rewrite(program, sheet({"x": "0.1"}))
     worst = sorted(tally.worst, reverse=True)
-    assert [made.line for made in worst] == [4, 5, 6, 7, 8]
-    assert worst[0].seconds == pytest.approx(60 * 0.1 / 20)
+    assert [made.line for made in worst] == [5, 6, 7, 8, 9]
+    assert worst[0].seconds == pytest.approx(60 * 0.1 / 30)
 
 
 @pytest.mark.parametrize(("word", "text"), [("M0", "jog"), ("M1", "jog"), ("M60", "jog"), ("M77", "M77")])
