@@ -96,6 +96,7 @@ def command(
         if output != "-":
             raise OutputRefused("a live program goes to standard output; leave -o out")
         with open_source(program, name, live=True) as source:
+            tell(["live: lines go out unproved, as soon as they can"])
             tally = _live(source, sheet, settings, again)
         tell(compensation_lines(tally, sheet, None, sheet_words))
         return
@@ -191,7 +192,6 @@ def _passed_over(source: Source, machine: Machine) -> str:
 
 
 def _live(source: Source, machine: Machine, settings: Settings, again: bool) -> Tally:
-    say("live: lines go out unproved, as soon as they can")
     sink = standard_output()
     rewriting = Compensator(machine, settings, lambda text: sink.write(text.encode(ENCODING)), header(machine), again)
     for block in blocks(source.lines()):

@@ -68,7 +68,7 @@ def _list(found: Iterator[Reversal], as_json: bool) -> None:
 def _statistics(source: Source, setup: Setup, ripple: dict[str, int], machine: Machine, as_json: bool) -> None:
     axes = statistics(_blocks(source), setup, ripple)
     if as_json:
-        show(json.dumps({"schema": SCHEMA, "units": "mm", "axes": tables.as_json(axes)}, indent=2))
+        show(*json.dumps({"schema": SCHEMA, "units": "mm", "axes": tables.as_json(axes)}, indent=2).splitlines())
         return
     if not axes:
         show("no axis moves")

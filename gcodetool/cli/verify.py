@@ -65,7 +65,7 @@ def command(
             tolerance,
         )
     if as_json:
-        show(json.dumps(_plain(verdict), indent=2))
+        show(*json.dumps(_plain(verdict), indent=2).splitlines())
     else:
         show(f"lash: {lash_line(sheet)}", *proof_lines(verdict), *sheet_lines(sheet, machine is not None), *CAUTIONS)
     if not verdict.holds:

@@ -30,6 +30,8 @@ NO_HEIGHT = 1e-6
 # heights within a sort key: steps of a tenth of that, and how many there can be (1000 m)
 HEIGHT_STEP = 1e-7
 TALL = 1 << 40
+# a layer is joined with the next younger one that has more than a share of 1 / JOIN of its size
+JOIN = 3
 
 
 class Grid:
@@ -93,8 +95,8 @@ class Clearing:
         self.depth = depth
         self._shape = _shapes(pieces)
         self._base = float(min(pieces[:, Z0].min(), pieces[:, Z1].min())) - 1.0 if len(pieces) else 0.0
-        # pieces that cleared a part of a cell in earlier blocks, sorted by cell and height
-        self._old, self._piece, self._low = np.empty(0, np.int64), np.empty(0, np.int64), np.empty(0)
+        # what earlier blocks left, the oldest and largest first
+        self._layers: list[_Layer] = []
         self._open(0, 1)
 
     def _open(self, first: int, span: int) -> None:
@@ -171,20 +173,18 @@ class Clearing:
 
     def older(self, cell: Ints, height: Floats) -> tuple[Ints, Ints]:
         """Pieces of earlier blocks that cleared a part of a cell at or below a height: ``(row, piece)``."""
-        low, high = (
-            np.searchsorted(self._old, cell * TALL),
-            np.searchsorted(self._old, self._key(cell, height), "right"),
-        )
-        row, index = expand(low, high - low)
-        return row, self._piece[index]
+        first, last = cell * TALL, self._key(cell, height)
+        found = [layer.between(first, last) for layer in self._layers]
+        if not found:
+            return np.empty(0, np.int64), np.empty(0, np.int64)
+        return np.concatenate([row for row, _ in found]), np.concatenate([piece for _, piece in found])
 
     def older_above(self, cell: Ints, height: Floats) -> Floats:
         """The next height above a height at which an earlier block cleared a part of a cell, or inf."""
-        place = np.searchsorted(self._old, self._key(cell, height), "right")
-        there = place < len(self._old)
-        there[there] = self._old[place[there]] // TALL == cell[there]
         found = np.full(len(cell), np.inf)
-        found[there] = self._low[place[there]]
+        key = self._key(cell, height)
+        for layer in self._layers:
+            found = np.minimum(found, layer.above(cell, key))
         return found
 
     def _key(self, cell: Ints, height: Floats) -> Ints:
@@ -195,9 +195,16 @@ class Clearing:
     def end(self) -> None:
         """Lay the block down: from now on it is part of what was cut before."""
         np.minimum.at(self.depth, self._full_key // self._span, self._full_least)
-        cell = np.concatenate([self._old // TALL, self._part_key // self._span])
-        piece = np.concatenate([self._piece, self._part_piece])
-        low = np.concatenate([self._low, self._part_low])
+        self._layers.append(self._layer(self._part_key // self._span, self._part_piece, self._part_low))
+        # layers of like size are joined, so that each entry is sorted a few times only, however long the program is
+        while len(self._layers) > 1 and len(self._layers[-2].key) < JOIN * len(self._layers[-1].key):
+            pair = self._layers[-2:]
+            columns = ((layer.key // TALL, layer.piece, layer.low) for layer in pair)
+            self._layers[-2:] = [self._layer(*(np.concatenate(column) for column in zip(*columns, strict=True)))]
+        self._open(self._first + self._span - 1, 1)
+
+    def _layer(self, cell: Ints, piece: Ints, low: Floats) -> _Layer:
+        """A layer without what can no longer matter."""
         keep = low < self.depth[cell] - NO_HEIGHT
         cell, piece, low = cell[keep], piece[keep], low[keep]
         order = np.lexsort((low, self._shape[piece], cell))
@@ -205,11 +212,31 @@ class Clearing:
         # the same stretch cut again deeper makes the shallower one useless
         first = np.ones(len(cell), np.bool_)
         first[1:] = (cell[1:] != cell[:-1]) | (self._shape[piece[1:]] != self._shape[piece[:-1]])
-        cell, piece, low = cell[first], piece[first], low[first]
-        key = self._key(cell, low)
+        key = self._key(cell[first], low[first])
         order = np.argsort(key, kind="stable")
-        self._old, self._piece, self._low = key[order], piece[order], low[order]
-        self._open(self._first + self._span - 1, 1)
+        return _Layer(key[order], piece[first][order], low[first][order])
+
+
+class _Layer:
+    """Pieces that cleared a part of a cell in earlier blocks, sorted by cell and height."""
+
+    def __init__(self, key: Ints, piece: Ints, low: Floats) -> None:
+        self.key, self.piece, self.low = key, piece, low
+
+    def between(self, first: Ints, last: Ints) -> tuple[Ints, Ints]:
+        """Pieces with keys from first to last: ``(row, piece)``."""
+        start = np.searchsorted(self.key, first)
+        row, index = expand(start, np.searchsorted(self.key, last, "right") - start)
+        return row, self.piece[index]
+
+    def above(self, cell: Ints, key: Ints) -> Floats:
+        """The lowest height above a key in the same cell, or inf."""
+        place = np.searchsorted(self.key, key, "right")
+        there = place < len(self.key)
+        there[there] = self.key[place[there]] // TALL == cell[there]
+        found = np.full(len(cell), np.inf)
+        found[there] = self.low[place[there]]
+        return found
 
 
 def _running_least(group: Ints, value: Floats) -> Floats:

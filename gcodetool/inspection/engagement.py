@@ -17,8 +17,8 @@ from gcodetool.inspection.clearing import NO_HEIGHT, Clearing, Grid
 from gcodetool.inspection.cutting_records import Cutters, Engagement, Flags, Floats, Ints, Path, Samples, Slices
 from gcodetool.inspection.job_records import FLAT, Job
 from gcodetool.inspection.stock import Outline
-from gcodetool.inspection.swept import PI, RC, X0, X1, Y0, Y1, Circles, covered, gaps, radius_at
-from gcodetool.inspection.toolpath import cut_up, directions, places, vertical_moves
+from gcodetool.inspection.swept import PI, RC, SWEEP, X0, X1, Y0, Y1, Circles, covered, gaps, radius_at
+from gcodetool.inspection.toolpath import cut_up, directions, places, plan_length, vertical_moves
 
 # material thinner than this, measured across the feed, does not count as cut: rounding of a program, spring of a cutter
 SKIN = 0.005
@@ -26,6 +26,12 @@ SKIN = 0.005
 TOUCH = 0.02
 # places along a move are at most this share of the cutter's radius apart
 SPACING = 0.5
+# as many places as that at most, the longest moves having fewer then; bounds the memory
+MOST_SAMPLES = 600_000
+# a place lies at least this share of a piece behind its beginning
+CLEAR = 0.05
+# cells that all pieces together may cover before the cells are made larger
+MOST_GROUND = 40e6
 # pieces are at most this many radii long
 PIECE = 4.0
 # a slice is at least this thick, and at least this share of its height above the tip
@@ -124,27 +130,38 @@ class _Follower:
     # ---- setting up -----------------------------------------------------------------------------------------------
 
     def _sample(self) -> tuple[Samples, Ints]:
-        """Places at the middles of equal parts of each piece, at the end of a vertical one."""
-        p, radius = self.pieces, self.cutters.radius[self.tool]
-        size = np.maximum(np.hypot(p[:, X1] - p[:, X0], p[:, Y1] - p[:, Y0]), p[:, RC] * np.abs(p[:, 10]))
-        count = np.maximum(np.ceil(size / (SPACING * radius) - 1e-9), 1.0).astype(np.int64)
-        row = np.repeat(np.arange(len(p)), count)
+        """Places at the middles of equal parts of each move, at the end of a vertical one; with the piece of each."""
+        moves, first, pieces = np.unique(self.move, return_index=True, return_counts=True)
+        radius, length = self.cutters.radius[self.path.tool[moves]], plan_length(self.path, moves)
+        count = np.maximum(np.ceil(length / (SPACING * radius) - 1e-9), 1.0)
+        count = _at_most(count, MOST_SAMPLES).astype(np.int64)
+        row = np.repeat(np.arange(len(moves)), count)
         index = np.arange(len(row)) - (np.cumsum(count) - count)[row]
-        upright = vertical_moves(self.path)[self.move]
-        inner = np.where(upright[row], 1.0, (index + 0.5) / count[row])
-        share = self.low[row] + (self.high - self.low)[row] * inner
-        move = self.move[row]
+        move = moves[row]
+        share = (index + 0.5) / count[row]
+        inner = np.floor(share * pieces[row])
+        # where a piece begins, the circle is that of the end of the one before: stay clear of it
+        share = np.maximum(share, (inner + CLEAR) / pieces[row])
+        share = np.where(vertical_moves(self.path)[move], 1.0, share)
+        piece = first[row] + np.minimum(inner.astype(np.int64), pieces[row] - 1)
         fx, fy, vertical = directions(self.path, move, share)
         spot = places(self.path, move, share)
-        weight = self.path.length[move] * (self.high - self.low)[row] / count[row]
-        return Samples(move, share, weight, spot[:, 0], spot[:, 1], spot[:, 2], fx, fy, vertical), row
+        weight = (self.path.length[moves] / count)[row]
+        return Samples(move, share, weight, spot[:, 0], spot[:, 1], spot[:, 2], fx, fy, vertical), piece
 
     def _grid(self) -> Grid:
         used = self.cutters.radius[np.unique(self.tool)] if len(self.tool) else np.array([1.0])
         size = max(float(used.min()) / 4.0, float(used.max()) / 12.0)
+        # coarser where the cutter covers so much ground that the cells would be the work
+        ground = float(np.sum(2.0 * self.cutters.radius[self.tool] * self._piece_length()))
+        size = max(size, min(float(np.sqrt(ground / MOST_GROUND)), float(used.min()) / 2.5))
         low, high = self.outline.low, self.outline.high
         size = Grid(low, high, size).size
         return Grid((low[0] - 3 * size, low[1] - 3 * size), (high[0] + 3 * size, high[1] + 3 * size), size)
+
+    def _piece_length(self) -> Floats:
+        p = self.pieces
+        return np.maximum(np.hypot(p[:, X1] - p[:, X0], p[:, Y1] - p[:, Y0]), p[:, RC] * np.abs(p[:, SWEEP]))
 
     def _edges(self) -> tuple[Flags, Floats]:
         """Cells near the outline, and the height of the material in each cell."""
@@ -331,6 +348,17 @@ class _Asked:
         count = max(len(self.follower.pieces), 1)
         key = np.sort(row * count + np.concatenate([self.recent_piece[use], old]))
         return np.divmod(key[np.flatnonzero(np.diff(key, prepend=-1))], count)
+
+
+def _at_most(count: Floats, most: int) -> Floats:
+    """Counts with the largest cut down so far that their sum is at most ``most``, or all are 1."""
+    if count.sum() <= most:
+        return count
+    low, high = 1.0, float(count.max())
+    while high - low > 1.0:
+        middle = 0.5 * (low + high)
+        low, high = (middle, high) if np.minimum(count, middle).sum() <= most else (low, middle)
+    return np.floor(np.minimum(count, low))
 
 
 def _split(rows: Ints) -> Iterator[Ints]:

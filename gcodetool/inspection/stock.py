@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
+
 import numpy as np
 import shapely
 
@@ -12,6 +14,8 @@ from gcodetool.inspection.swept import PI, Circles, meet_segment
 
 # a stretch of feed motion that moves less than this in plan is no lateral cut
 NO_TRAVEL = 1e-3
+# points on an arc when the hull is drawn round it, and arcs looked at in one go
+ARC_POINTS, SOME_ARCS = 129, 1000
 # sides of a quarter of a round corner
 QUARTER = 64
 
@@ -60,9 +64,10 @@ def hull_of_cuts(path: Path, cutters: tuple[Cutter, ...], top: float) -> tuple[P
     low &= ~path.rapid & ~path.turning
     parts = []
     for tool in np.unique(path.tool[low]):
-        mine = low & (path.tool == tool)
-        points = np.concatenate([path.start[mine, :2], path.end[mine, :2], _round_points(path, mine)])
-        hull = shapely.MultiPoint(points).convex_hull
+        mine = np.flatnonzero(low & (path.tool == tool))
+        hull = shapely.MultiPoint(np.concatenate([path.start[mine, :2], path.end[mine, :2]])).convex_hull
+        for points in _arc_points(path, mine[path.plane[mine] == 1], hull):
+            hull = shapely.union(hull, shapely.MultiPoint(points)).convex_hull
         parts.append(hull.buffer(cutters[tool].radius, quad_segs=QUARTER))
     if not parts:
         return ()
@@ -70,14 +75,18 @@ def hull_of_cuts(path: Path, cutters: tuple[Cutter, ...], top: float) -> tuple[P
     return tuple((float(x), float(y)) for x, y in whole.exterior.coords[:-1])
 
 
-def _round_points(path: Path, mine: Flags) -> Floats:
-    """Points along the arcs in XY."""
-    arc = np.flatnonzero(mine & (path.plane == 1))
-    share = np.linspace(0.0, 1.0, 129)
-    angle = path.angle[arc, None] + path.sweep[arc, None] * share
-    x = path.centre[arc, 0, None] + path.radius[arc, None] * np.cos(angle)
-    y = path.centre[arc, 1, None] + path.radius[arc, None] * np.sin(angle)
-    return np.column_stack([x.ravel(), y.ravel()])
+def _arc_points(path: Path, arcs: Ints, hull: shapely.Geometry) -> Iterator[Floats]:
+    """Points along the arcs in XY that may reach out of a hull, some arcs at a time."""
+    shape = np.column_stack([path.centre[arcs], path.radius[arcs], path.angle[arcs], path.sweep[arcs]])
+    shape = np.unique(np.round(shape, 6), axis=0)
+    centre = shapely.points(shape[:, :2])
+    inside = shapely.contains(hull, centre) & (shapely.distance(shapely.boundary(hull), centre) > shape[:, 2])
+    share = np.linspace(0.0, 1.0, ARC_POINTS)
+    rest = shape[~inside]
+    for start in range(0, len(rest), SOME_ARCS):
+        x, y, radius, angle, sweep = (column[:, None] for column in rest[start : start + SOME_ARCS].T)
+        turned = angle + sweep * share
+        yield np.column_stack([(x + radius * np.cos(turned)).ravel(), (y + radius * np.sin(turned)).ravel()])
 
 
 class Outline:

@@ -154,7 +154,7 @@ def cut_up(path: Path, chosen: Ints, longest: Floats, steepest: Floats) -> tuple
 
     ``longest`` is the length in plan, ``steepest`` the fall in Z that one piece of each chosen move may have.
     """
-    plan = _plan_length(path, chosen)
+    plan = plan_length(path, chosen)
     fall = np.abs(path.end[chosen, 2] - path.start[chosen, 2])
     tall = (path.plane[chosen] > 1) * np.abs(path.sweep[chosen]) / CHORD
     wide = (path.plane[chosen] == 1) * np.abs(path.sweep[chosen]) / SEXTANT
@@ -174,7 +174,8 @@ def cut_up(path: Path, chosen: Ints, longest: Floats, steepest: Floats) -> tuple
     return pieces, move, low, high
 
 
-def _plan_length(path: Path, chosen: Ints) -> Floats:
+def plan_length(path: Path, chosen: Ints) -> Floats:
+    """Lengths of moves in plan."""
     straight = np.hypot(*(path.end[chosen, :2] - path.start[chosen, :2]).T)
     round_about = np.abs(path.radius[chosen] * path.sweep[chosen])
     return np.where(path.plane[chosen] > 0, round_about, straight)

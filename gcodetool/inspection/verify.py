@@ -22,7 +22,7 @@ from gcodetool.lash.running import Settings
 from gcodetool.machine import Machine
 from gcodetool.motion.controller import Controller
 from gcodetool.motion.frames import OFFSET_WORDS
-from gcodetool.motion.moves import ORDER, Event, Setup
+from gcodetool.motion.moves import ORDER, Event, Move, Setup
 from gcodetool.program.blocks import Block
 from gcodetool.program.numbers import MM_DIGIT, QUANTA_PER_MM, decimal_to_quanta
 
@@ -142,12 +142,16 @@ def _first_offset(original: Blocks) -> str:
 # ---- comparing -------------------------------------------------------------------------------------------------------
 
 
-def _contacts(blocks: Iterable[Block], setup: Setup) -> list[dict[str, int]]:
-    """Where each probe of the original stops, machine coordinates."""
+def _contacts(blocks: Iterable[Block], setup: Setup) -> list[dict[str, tuple[int, int]]]:
+    """Where each probe of the original stops, machine coordinates, and on which side it arrives there."""
     found = []
+    start: Sequence[int] = ()
     for item in Controller(setup).run(blocks):
-        if isinstance(item, Event) and item.what == "probe":
-            found.append(dict(zip(ORDER, item.at, strict=True)))
+        if isinstance(item, Move):
+            start = item.start
+        elif item.what == "probe":
+            ways = [(end > begin) - (end < begin) for begin, end in zip(start, item.at, strict=True)]
+            found.append({a: (at, way) for a, at, way in zip(ORDER, item.at, ways, strict=True)})
     return found
 
 
@@ -166,10 +170,13 @@ def _compare(
     return _pairs(intended_runs(Controller(setup).run(kept)), got, ease)
 
 
-def _touching(machine: Machine, setup: Setup, contacts: Sequence[Mapping[str, int]]) -> Setup:
+def _touching(machine: Machine, setup: Setup, contacts: Sequence[Mapping[str, tuple[int, int]]]) -> Setup:
     """The setup in which the drive of a probe stops one shift past the place where the tool touches."""
     lash = {letter: decimal_to_quanta(machine.axis(letter).lash) for letter in ORDER}
-    moved = [{a: v + shift(-1, lash[a], machine.axis(a).datum) for a, v in place.items()} for place in contacts]
+    moved = [
+        {a: at + (shift(way, lash[a], machine.axis(a).datum) if way else 0) for a, (at, way) in place.items()}
+        for place in contacts
+    ]
     return replace(setup, contacts=moved)
 
 

@@ -54,7 +54,7 @@ class Doubt:
         needed += ["feed"] if self._run.machine.take_up_feed is not None and command.kind is not Kind.RAPID else []
         for name in needed:
             if name in self.fields and name not in stated:
-                reason = f"the {name.replace('_', ' ')} hangs on a deletable block before it"
+                reason = f"its {name.replace('_', ' ')} would hang on a deletable block before it"
                 raise command.refusal(command.block.text.strip()[:40], reason, _WAY_OUT)
 
     def snapshot(self) -> Snapshot:

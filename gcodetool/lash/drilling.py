@@ -102,9 +102,6 @@ def _hole_side(run: Running, command: Command, asked: Cycle, axis: AxisKnowledge
     """The side on which an axis reaches the hole; 0 where it has to be settled."""
     aside = asked.aside.get(axis.letter, 0)
     if aside:
-        if abs(aside) < axis.lash(run.is_inch(axis, command.after)):
-            reason = f"the sidestep of {axis.letter} in back boring is shorter than its lash"
-            raise command.refusal("G87", reason, "Step aside farther, or bore by other moves")
         return -1 if aside > 0 else 1
     step = asked.steps[axis.letter]
     return arrival_side(run, command, axis, step if asked.absolute else axis.position + step)
@@ -168,10 +165,21 @@ def _plane_words(run: Running, command: Command, sides: Mapping[str, int]) -> li
         if command.has(letter):
             index = command.shape.at[letter]
             pieces[index] = run.shifted_word(axis, pieces[index], command.after, side)
+            _step_aside(run, command, pieces, axis, side)
         elif side != axis.side:
             reason = f"back boring over the place where {letter} stands, from its other side"
             raise command.refusal("G87", reason, f"State {letter} in the block")
     return pieces
+
+
+def _step_aside(run: Running, command: Command, pieces: list[str], axis: AxisKnowledge, side: int) -> None:
+    """I, J of back boring: the place beside the hole has the other side than the hole, so the step is longer."""
+    name = "IJ"[PLANE_AXES[command.after.plane].index(axis.letter)]
+    if command.after.motion == "G87" and command.has(name) and command.quanta(name):
+        inch = run.is_inch(axis, command.after)
+        index = command.shape.at[name]
+        add = axis.shift_on(-side, inch) - axis.shift_on(side, inch)
+        pieces[index] = run.plus(axis, pieces[index], command.after, add)
 
 
 # ---- how deep

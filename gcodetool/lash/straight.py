@@ -12,7 +12,7 @@ from dataclasses import dataclass
 from gcodetool.lash import holes
 from gcodetool.lash.knowledge import AxisKnowledge
 from gcodetool.lash.running import Running
-from gcodetool.motion.command import Command, Kind
+from gcodetool.motion.command import Command
 from gcodetool.motion.dialect import ACTS_LAST
 from gcodetool.motion.modal import code_word
 from gcodetool.program.numbers import QUANTA_PER_MM
@@ -160,6 +160,8 @@ def feed(run: Running, command: Command) -> None:
     if unknown:
         _feed_from_unknown(run, command, goal, unknown)
         return
+    if run.maybe_adrift:
+        _absorb(run, command, goal)
     if run.settings.hole_overshoot and _plunges(command, run, goal):
         holes.approach(run)
     texts = run.reseat(command)
@@ -170,6 +172,27 @@ def feed(run: Running, command: Command) -> None:
     pieces = _shift_words(run, command, sides) if sides else list(command.pieces)
     _arrive(run, command, goal, sides)
     finish_feed(run, command, texts, pieces)
+
+
+def _absorb(run: Running, command: Command, goal: Mapping[str, int]) -> None:
+    """An axis that a cycle has left adrift and that now moves alone needs no line to be put right.
+
+    Alone it goes along one line whether it is seated or not: it is enough that its target lies beyond where it is.
+    """
+    if not run.moved:
+        # off the datum side at the start: the first cut must begin where the program says
+        return
+    moved = [letter for letter in goal if not _stands(command, run.axes[letter], goal[letter])]
+    axis = run.axes[moved[0]] if len(moved) == 1 else None
+    if axis is None or not axis.adrift or axis.shift is None:
+        return
+    really = axis.position + axis.shift - axis.shift_on(axis.side, run.is_inch(axis, command.after))
+    way = goal[axis.letter] - really
+    if way * axis.side > 0 and (goal[axis.letter] - axis.position) * axis.side >= 0:
+        axis.adrift = False
+    elif way * axis.side < 0:
+        axis.adrift = False
+        axis.land(axis.position, -axis.side, axis.framed)
 
 
 def _plunges(command: Command, run: Running, goal: Mapping[str, int]) -> bool:
@@ -193,12 +216,11 @@ def _feed_known(run: Running, command: Command, letter: str) -> bool:
 
 
 def _feed_from_unknown(run: Running, command: Command, goal: Mapping[str, int], unknown: list[str]) -> None:
-    """A feed that starts from an unknown side: Z alone is settled, and what is no feed yet; all else is refused."""
+    """A feed that starts from an unknown side: Z alone is settled, all else is refused."""
     axes = [run.axes[letter] for letter in goal]
-    wake_up = command.kind is Kind.LINE and run.feed is None
     alone = unknown == ["Z"] and all(a.letter == "Z" or _stands(command, a, goal[a.letter]) for a in axes)
     z_unsaid = command.after.distance == "G91" and any(run.axes[letter].shift is None for letter in unknown)
-    if (wake_up or alone) and not z_unsaid:
+    if alone and not z_unsaid:
         sides = {**_plan(run, command, goal).sides, **{a: settling_side(run.axes[a]) for a in unknown}}
         plan = Plan(sides, tuple(unknown))
         pieces = run.with_feed(command, command.pieces)

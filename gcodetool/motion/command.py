@@ -171,10 +171,10 @@ def _check_letters(command: Command) -> None:
 def _check_exponent(command: Command) -> None:
     """Refuse ``X1E-5``: a reader of RS-274 numbers takes it for X1, the writer meant 0.00001."""
     index = command.shape.at["E"] - 1
-    letter = command.pieces[index - 2].upper() if index > 1 else ""
+    letter = command.pieces[index - 3].upper() if index > 3 else ""
     if letter == "F" or not (command.shape.axes or not _ARC_LETTERS.isdisjoint(command.shape.at)):
         return
-    word = "".join(command.pieces[max(index - 2, 0) : index + 2]).strip()
+    word = "".join(command.pieces[max(index - 3, 0) : index + 2]).strip()
     raise command.refusal(word, "a number with an exponent, or an axis E", "Write the number with a decimal point")
 
 

@@ -142,6 +142,9 @@ class Controller:
 
     def _machine(self, command: Command) -> Iterator[Happening]:
         digits = {a: command.quanta(a) for a, _ in command.shape.axes}
+        if not self.setup.offsets:
+            # nobody knows where the frame of the program lies in the machine
+            self.unplaced.update(digits)
         yield self._go(command.after.motion == "G0", digits)
         self.unplaced.update(digits)
         yield Event("home", self._line, self._position(), "".join(digits))

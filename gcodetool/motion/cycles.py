@@ -77,6 +77,8 @@ def read_cycle(command: Command, sticky: Sticky, height: int) -> Cycle:
 
     Raises Refusal for the errors of NISTIR 6556, 3.5.16.
     """
+    if command.after.feed_mode == "G93":
+        raise command.refusal(command.after.motion, "a cycle in inverse time", "State G94 before the cycle")
     plane = PLANE_AXES[command.after.plane]
     absolute = command.after.distance == "G90"
     level, depth = sticky.quanta("R"), sticky.quanta(plane[2])

@@ -92,7 +92,8 @@ class HeightMap:
         return taken
 
     def engaged(self, at: Point, towards: tuple[float, float], radius: float, above: float, count: int = 180):
-        """For angles from the left of the feed to its right: is there material just outside the circle, ``above`` the tip?"""
+        """For angles from the left of the feed to its right: is there material just outside the circle, ``above`` the
+        tip?"""
         phi = (np.arange(count) + 0.5) / count * np.pi
         out = radius + 0.75 * self.pixel
         x = at[0] + out * (np.sin(phi) * towards[0] - np.cos(phi) * towards[1])

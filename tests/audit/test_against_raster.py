@@ -1,4 +1,5 @@
-"""Random programs against a height map of pixels that was written only for this: angles, labels, and the volume removed."""
+"""Random programs against a height map of pixels that was written only for this: angles, labels, and the volume
+removed."""
 
 from __future__ import annotations
 
@@ -73,7 +74,8 @@ def random_program(seed: int, count: int, levels: tuple[float, ...]) -> tuple[st
 
 
 def compare(seen: Seen, moves: Moves) -> tuple[np.ndarray, np.ndarray, float]:
-    """For each sample the share of angles that differ, the engaged angles of both in degrees, and the volume by pixels."""
+    """For each sample the share of angles that differ, the engaged angles of both in degrees, and the volume by
+    pixels."""
     samples, slices = seen.engagement.samples, seen.engagement.slices
     starts = np.searchsorted(slices.sample, np.arange(len(samples.move) + 1))
     number = seen.path.line[samples.move] - FIRST_LINE

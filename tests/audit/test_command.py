@@ -29,7 +29,15 @@ def test_the_demo_part_in_words(run, tmp_path) -> None:
     (tmp_path / "job.toml").write_text(JOB, encoding="utf-8")
     done = run(PLATE, "--machine", ROUTER, "--job", "job.toml")
     assert (done.returncode, done.stderr) == (0, "")
-    for words in ("How the cutter cuts", "bore 14.000", "13.880", "take-ups: ", "estimate", "0.5 to 2 times", "Before you cut"):
+    for words in (
+        "How the cutter cuts",
+        "bore 14.000",
+        "13.880",
+        "take-ups: ",
+        "estimate",
+        "0.5 to 2 times",
+        "Before you cut",
+    ):
         assert words in done.stdout
     assert "climb" in done.stdout
 

@@ -11,14 +11,18 @@ from gcodetool.inspection.findings import CODES, MOST_PLACES, finding, places, s
 from tests.audit.conftest import ROOT
 
 PAGE = (ROOT / "docs" / "audit.md").read_text(encoding="utf-8")
-ROWS = {int(code): (severity, text) for code, severity, text in re.findall(r"^\| (\d+) \| (\w+) \| (.*) \|$", PAGE, re.M)}
+ROWS = {
+    int(code): (severity, text) for code, severity, text in re.findall(r"^\| (\d+) \| (\w+) \| (.*) \|$", PAGE, re.M)
+}
 
 # Published once, never changed: a code that goes away leaves a hole.
 KNOWN = [*range(101, 109), *range(201, 205), *range(301, 311), *range(401, 404), 501, 502, 701, 702]
 
 
 def test_the_page_and_the_table_name_the_same_codes_with_the_same_severity() -> None:
-    assert {code: severity for code, (severity, _) in ROWS.items()} == {code: str(each.severity) for code, each in CODES.items()}
+    assert {code: severity for code, (severity, _) in ROWS.items()} == {
+        code: str(each.severity) for code, each in CODES.items()
+    }
 
 
 def test_codes_are_stable() -> None:

@@ -1,6 +1,8 @@
-"""The mean cutting force against direct integration, closed forms, published examples; and what holds an axis against it.
+"""The mean cutting force against direct integration, closed forms, published examples; and what holds an axis against
+it.
 
-Coefficients: review of milling force models for aluminium alloys, Chin. J. Mech. Eng. 2021, table 5, doi 10.1186/s10033-021-00536-9.
+Coefficients: review of milling force models for aluminium alloys, Chin. J. Mech. Eng. 2021, table 5, doi
+10.1186/s10033-021-00536-9.
 """
 
 from __future__ import annotations
@@ -15,9 +17,8 @@ from hypothesis import strategies as st
 from scipy.integrate import quad
 from scipy.optimize import brentq
 
-from gcodetool.inspection.cutting_records import Hold
+from gcodetool.inspection.cutting_records import Cutters, Hold, Label
 from gcodetool.inspection.force import advice, coefficients, forces, hold, largest_sine, mean_chip, mean_force
-from gcodetool.inspection.cutting_records import Cutters, Label
 from gcodetool.inspection.job_records import Cutter, Material
 from gcodetool.inspection.materials import DEFAULTS, as_sheet, material_named
 from gcodetool.inspection.outlines import box
@@ -172,9 +173,12 @@ def test_the_published_force_and_power_example() -> None:
 
 
 @pytest.mark.parametrize(
-    ("ratio", "share"), [(0.1, 0.918), (0.2, 0.832), (0.3, 0.747), (0.4, 0.666), (0.5, 0.591), (0.7, 0.462), (1.0, 0.322)]
+    ("ratio", "share"),
+    [(0.1, 0.918), (0.2, 0.832), (0.3, 0.747), (0.4, 0.666), (0.5, 0.591), (0.7, 0.462), (1.0, 0.322)],
 )
-def test_climb_stops_feeding_itself_at_a_width_that_depends_on_the_radial_share_only(ratio: float, share: float) -> None:
+def test_climb_stops_feeding_itself_at_a_width_that_depends_on_the_radial_share_only(
+    ratio: float, share: float
+) -> None:
     material = Material("", "", kt=600.0, kr=600.0 * ratio)
     crossing = brentq(lambda x: force_of(material, *down(x), 1.0, 0.1, 2)[0], 0.01, 0.999)
     assert crossing == pytest.approx(share, abs=6e-4)
@@ -203,7 +207,9 @@ def test_chip_thickness(share, degrees, largest, thinning, mean) -> None:
         top = float(largest_sine(np.array([first]), np.array([last]))[0])
         assert top == pytest.approx(largest, abs=6e-5)
         assert 1 / top == pytest.approx(thinning, abs=6e-5)
-        assert float(mean_chip(np.array([1.0]), np.array([first]), np.array([last]))[0]) == pytest.approx(mean, abs=6e-5)
+        assert float(mean_chip(np.array([1.0]), np.array([first]), np.array([last]))[0]) == pytest.approx(
+            mean, abs=6e-5
+        )
     if share < 0.5:
         assert thinning == pytest.approx(1 / (2 * math.sqrt(share * (1 - share))), abs=6e-5)
 
@@ -226,7 +232,8 @@ def test_mean_chip_of_a_handbook_example() -> None:
     ],
 )  # fmt: skip
 def test_specific_force_of_the_groups(name: str, chip: float, expected: float) -> None:
-    """kc = kc1.1 h^-mc with the values of VDI 3323 groups; mild steel at 0.1 mm: a handbook table says 2200 (0.5 % apart)."""
+    """kc = kc1.1 h^-mc with the values of VDI 3323 groups; mild steel at 0.1 mm: a handbook table says 2200 (0.5 %
+    apart)."""
     assert float(coefficients(material_named(name), np.array([chip]))[0][0]) == pytest.approx(expected, abs=1.0)
 
 
@@ -280,11 +287,18 @@ def test_force_along_a_program_is_that_of_its_engagement_turned_into_the_axes() 
             )  # fmt: skip
             k = seen.at(6)
             power = forces(
-                seen.path, Cutters.of((Cutter("*", 6.0),)), seen.engagement.samples, seen.engagement.slices, seen.cut, AL7075
+                seen.path,
+                Cutters.of((Cutter("*", 6.0),)),
+                seen.engagement.samples,
+                seen.engagement.slices,
+                seen.cut,
+                AL7075,
             )
             along, left = force_of(AL7075, *(up if sign > 0 else down)(0.25), 2.0, 0.05, 2)[:2]
             assert (power.along[k], power.side[k]) == pytest.approx((along, left), rel=1e-3)
-            assert (power.fx[k], power.fy[k]) == pytest.approx((along * ux - left * uy, along * uy + left * ux), rel=1e-3)
+            assert (power.fx[k], power.fy[k]) == pytest.approx(
+                (along * ux - left * uy, along * uy + left * ux), rel=1e-3
+            )
             assert power.chip_load[k] == pytest.approx(0.05)
 
 
@@ -339,7 +353,8 @@ def test_a_plain_nut_is_dragged_along_its_motion_only(force, way, expected) -> N
     [(-30.0, -1.0, 30 / 25), (-30.0, 1.0, 30 / 15), (-30.0, 0.0, 30 / 25), (30.0, 1.0, 0.0), (-10.0, -1.0, 10 / 25)],
 )
 def test_a_spring_nut_gives_way_from_its_stiff_side_only(force, way, ratio) -> None:
-    """Preload 20 N, friction 5 N, stiff side +: it opens towards minus, friction helping (25 N) or working with the cut (15 N)."""
+    """Preload 20 N, friction 5 N, stiff side +: it opens towards minus, friction helping (25 N) or working with the
+    cut (15 N)."""
     assert verdict(axis(friction=5, preload=20, stiff_side=1), force, way)[1] == pytest.approx(ratio)
     assert verdict(axis(friction=5, preload=20, stiff_side=-1), -force, -way)[1] == pytest.approx(ratio)
 

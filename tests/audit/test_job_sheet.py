@@ -120,7 +120,9 @@ def test_a_tool_as_an_option(text: str, expected: Cutter) -> None:
     assert cutter_from_option(text) == expected
 
 
-@pytest.mark.parametrize("text", ["1", "=3", "1=", "1=x", "1=3,round", "1=3,flutes", "1=-3", "1=3,flutes=1.5", "1=3,hand=up"])
+@pytest.mark.parametrize(
+    "text", ["1", "=3", "1=", "1=x", "1=3,round", "1=3,flutes", "1=-3", "1=3,flutes=1.5", "1=3,hand=up"]
+)
 def test_a_wrong_tool_option(text: str) -> None:
     with pytest.raises(SheetError, match="--tool"):
         cutter_from_option(text)
@@ -128,7 +130,13 @@ def test_a_wrong_tool_option(text: str) -> None:
 
 def test_options_are_laid_over_the_sheet() -> None:
     job = job_from_options(
-        parse_job(GOOD), tools=["1=4"], stock="box:0,0,10,20", top=0.0, keep_outs=["disc:0,0,5@9"], material="steel", speed=9.0
+        parse_job(GOOD),
+        tools=["1=4"],
+        stock="box:0,0,10,20",
+        top=0.0,
+        keep_outs=["disc:0,0,5@9"],
+        material="steel",
+        speed=9.0,
     )
     assert [(each.number, each.diameter) for each in job.cutters] == [("1", 4.0), ("2", 6.0), ("*", 3.175)]
     assert job.stock.outline == box(0.0, 0.0, 10.0, 20.0)
@@ -160,8 +168,8 @@ def test_outlines() -> None:
 
 
 def test_reading_a_job_loads_neither_numpy_nor_shapely() -> None:
-    code = (
-        "import sys, gcodetool.inspection.job_sheet; print([n for n in ('numpy', 'shapely') if n in sys.modules])"
+    code = "import sys, gcodetool.inspection.job_sheet; print([n for n in ('numpy', 'shapely') if n in sys.modules])"
+    done = subprocess.run(
+        [sys.executable, "-c", code], capture_output=True, text=True, env={"PYTHONPATH": str(ROOT)}, check=True
     )
-    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, env={"PYTHONPATH": str(ROOT)}, check=True)
     assert done.stdout == "[]\n"

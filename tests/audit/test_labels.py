@@ -100,7 +100,8 @@ def reversed_centre_line() -> str:
 
 
 def test_the_published_centre_line_lies_left_of_the_part_at_half_the_diameter() -> None:
-    """Table 12 travels with the cutter on the left (G41), table 13 half a diameter beside it: the pair agrees with the label."""
+    """Table 12 travels with the cutter on the left (G41), table 13 half a diameter beside it: the pair agrees with
+    the label."""
     seen = look(CENTRE_LINE, 1.0)
     samples = seen.engagement.samples
     rows = ~samples.vertical & ~seen.path.rapid[samples.move]
@@ -163,7 +164,9 @@ def random_moves(seed: int) -> list[tuple[float, float]]:
     return [(round(rnd.uniform(-30, 30), 3), round(rnd.uniform(-30, 30), 3)) for _ in range(12)]
 
 
-def lines_of(points: list[tuple[float, float]], mirror: bool = False, first_cut: tuple[float, float] | None = None) -> str:
+def lines_of(
+    points: list[tuple[float, float]], mirror: bool = False, first_cut: tuple[float, float] | None = None
+) -> str:
     sign = -1.0 if mirror else 1.0
     cut = first_cut or (0.0, 0.0)
     text = [HEAD.rstrip(), f"G0 X{sign * cut[0]:.3f} Y-40 Z5", "G0 Z-1", "G1 Y40", "G0 Z5"]
@@ -206,17 +209,23 @@ def test_m4_alone_does_not_make_a_right_hand_cutter_cut_the_other_way() -> None:
 
 
 def test_a_contour_that_crosses_a_slot_flips_where_the_wall_changes_side() -> None:
-    """Down the left wall of a slot, across, and back up the right wall: climb on one, conventional on the other in one chain."""
+    """Down the left wall of a slot, across, and back up the right wall: climb on one, conventional on the other in
+    one chain."""
     program = (
         HEAD + "G0 X0 Y-40 Z5\nG0 Z-1\nG1 Y40\nG0 Z5\nG0 X-1 Y-40\nG0 Z-1\nG1 Y-10\nG1 X1\nG1 Y40\n"
     )  # fmt: skip
     seen = look(program, D, box(-60.0, -30.0, 60.0, 60.0))
-    flips = [(int(seen.path.line[a]), int(seen.path.line[b]), old.word, new.word) for a, b, old, new in seen.labels.flips]
+    flips = [
+        (int(seen.path.line[a]), int(seen.path.line[b]), old.word, new.word) for a, b, old, new in seen.labels.flips
+    ]
     assert flips == [(10, 12, "conventional", "climb")]
 
 
 def test_labels_by_line_know_every_feed_line_and_no_other() -> None:
-    program = HEAD + "G0 X-40 Y0 Z5\nG1 Z-2\nG1 X40\n(a remark)\nG0 Z5\nG0 X0 Y20\nG1 Z-2\nG0 Z5\nG81 X5 Y30 Z-2 R1\nX9\nG80\n"
+    program = (
+        HEAD
+        + "G0 X-40 Y0 Z5\nG1 Z-2\nG1 X40\n(a remark)\nG0 Z5\nG0 X0 Y20\nG1 Z-2\nG0 Z5\nG81 X5 Y30 Z-2 R1\nX9\nG80\n"
+    )
     job = Job(cutters=(Cutter("*", D),), stock=StockShape(box(-30.0, -1.0, 30.0, 60.0), 0.0))
     assert labels_by_line(program.encode(), job, SETUP) == {
         5: "plunge", 6: "conventional", 10: "drill", 12: "drill", 13: "drill",

@@ -51,7 +51,9 @@ def test_a_cutter_that_was_never_started() -> None:
     assert 201 in codes(judge(HEAD + "M5\n" + PASS))
 
 
-@pytest.mark.parametrize(("word", "hand", "wrong"), [("M3", 1, False), ("M4", 1, True), ("M3", -1, True), ("M4", -1, False)])
+@pytest.mark.parametrize(
+    ("word", "hand", "wrong"), [("M3", 1, False), ("M4", 1, True), ("M3", -1, True), ("M4", -1, False)]
+)
 def test_the_sense_of_the_spindle_against_the_hand_of_the_cutter(word: str, hand: int, wrong: bool) -> None:
     found = judge((HEAD + PASS).replace("M3", word), cutters=(Cutter("*", 6.0, hand=hand),))
     assert (202 in codes(found)) == wrong
@@ -82,7 +84,8 @@ def offset(**places: float) -> Setup:
 
 
 def test_take_ups_and_settles_count_towards_the_envelope() -> None:
-    """From -40 to 40, a take-up reaches 0.1 beyond; the first rapid settles 0.1 + 0.5 past -40 on the plus side, inside."""
+    """From -40 to 40, a take-up reaches 0.1 beyond; the first rapid settles 0.1 + 0.5 past -40 on the plus side,
+    inside."""
     found = judge(HEAD + PASS, axes(x=(-100, 100)))
     assert [(each.low, each.high) for each in found.envelope if each.axis == "X"] == [(-40.0, pytest.approx(40.1))]
     other = judge(HEAD + "G0 X40 Y0 Z5\nG1 Z-1\nG1 X-40\nG0 Z5\n", axes(x=(-100, 100)))

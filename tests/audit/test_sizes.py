@@ -1,8 +1,10 @@
-"""Predicted sizes against the closed forms of play: circles, squares, holes, inclined lines, and a cut that drags the axes.
+"""Predicted sizes against the closed forms of play: circles, squares, holes, inclined lines, and a cut that drags the
+axes.
 
-Closed forms (path radius R, lash B on both axes, friction holding): centre path extents 2R - B; flats sqrt(2RB - B^2); radius on
-the diagonals sqrt(R^2 - B^2/2); unequal lash +-(Bx - By)/(2 sqrt 2) on the diagonals, the sign by the direction of travel; hole
-and boss undersize by B; two holes S, S - B or S + B apart.  Derived from the play operator (see docs), not published.
+Closed forms (path radius R, lash B on both axes, friction holding): centre path extents 2R - B; flats sqrt(2RB -
+B^2); radius on the diagonals sqrt(R^2 - B^2/2); unequal lash +-(Bx - By)/(2 sqrt 2) on the diagonals, the sign by the
+direction of travel; hole and boss undersize by B; two holes S, S - B or S + B apart.  Derived from the play operator
+(see docs), not published.
 """
 
 from __future__ import annotations
@@ -80,8 +82,8 @@ def test_a_bore_comes_out_undersize_by_the_lash(size: float, lash: float, word: 
 
 
 def test_the_figures_of_a_ten_millimetre_circle() -> None:
-    """Offset-polygon check of a part of radius 10, lash 0.2: 19.800 across, flat 1.833 (r 1.5) and 1.661 (r 3), largest radius
-    +0.0769 and +0.0744 for a hole, +0.0788 and a flat of 1.990 for a boss."""
+    """Offset-polygon check of a part of radius 10, lash 0.2: 19.800 across, flat 1.833 (r 1.5) and 1.661 (r 3),
+    largest radius +0.0769 and +0.0744 for a hole, +0.0788 and a flat of 1.990 for a boss."""
     for r, flat, largest in ((1.5, 1.833, 0.0769), (3.0, 1.661, 0.0744)):
         found = figures(one(features(laps("G3", 10.0 - r), machine(0.2), 2 * r), "bore"))
         assert found["diameter X"].before == pytest.approx(19.800, abs=5e-4)
@@ -174,7 +176,9 @@ def spacing(program: str, lash: float) -> float:
 
 def test_holes_are_as_far_apart_as_their_approaches_say() -> None:
     """The same side: S; each reached moving away from the other: S - B; each moving towards the other: S + B."""
-    assert spacing(holes((-50, 0), (-50, 0), (0, 0), (30, 0))[:0] + holes((0, 0), (30, 0)), 0.2) == pytest.approx(30.0, abs=0.21)
+    assert spacing(holes((-50, 0), (-50, 0), (0, 0), (30, 0))[:0] + holes((0, 0), (30, 0)), 0.2) == pytest.approx(
+        30.0, abs=0.21
+    )
     same = HEAD + "G0 X-9 Y0 Z5\nG0 X0\nG1 Z-2\nG0 Z5\nG0 X30\nG1 Z-2\n"
     assert spacing(same, 0.2) == pytest.approx(30.0)
     away = HEAD + "G0 X15 Y0 Z5\nG0 X0\nG1 Z-2\nG0 Z5\nG0 X30\nG1 Z-2\n"
@@ -184,8 +188,9 @@ def test_holes_are_as_far_apart_as_their_approaches_say() -> None:
 
 
 def test_four_holes_visited_in_order_keep_the_side_of_an_axis_that_does_not_move() -> None:
-    """Square of 30, lash 0.2, from (-50, -50): A, B, C at one offset, D off by 0.2 in X (simulated with the play operator)."""
-    found = features(HEAD + "G0 X-50 Y-50 Z5\n" + holes((0, 0), (30, 0), (30, 30), (0, 30))[len(HEAD):], machine(0.2))
+    """Square of 30, lash 0.2, from (-50, -50): A, B, C at one offset, D off by 0.2 in X (simulated with the play
+    operator)."""
+    found = features(HEAD + "G0 X-50 Y-50 Z5\n" + holes((0, 0), (30, 0), (30, 30), (0, 30))[len(HEAD) :], machine(0.2))
     errors = {each.name: each.measures[0].error_before for each in found if each.kind == "hole pair"}
     wrong = {name: error for name, error in errors.items() if abs(error) > 1e-3}
     assert len(errors) == 4
@@ -207,7 +212,11 @@ def test_a_line_after_the_reversal_of_one_axis_runs_beside_itself(degrees: float
 def test_a_boss_and_an_arc_and_a_chord_circle_are_recognised() -> None:
     """A circle written as 90 short lines is a circle to a caliper."""
     points = [(10 * math.cos(2 * math.pi * k / 90), 10 * math.sin(2 * math.pi * k / 90)) for k in range(91)]
-    program = HEAD + "G0 X0 Y-1 Z5\nG0 Y0\nG1 Z-1\nG1 X10\n" + "".join(f"G1 X{x:.4f} Y{y:.4f}\n" for x, y in points[1:] + points[1:])
+    program = (
+        HEAD
+        + "G0 X0 Y-1 Z5\nG0 Y0\nG1 Z-1\nG1 X10\n"
+        + "".join(f"G1 X{x:.4f} Y{y:.4f}\n" for x, y in points[1:] + points[1:])
+    )
     found = figures(one(features(program, machine(0.2)), "bore"))
     assert found["diameter X"].intended == pytest.approx(23.0, abs=0.002)
     assert found["diameter X"].error_before == pytest.approx(-0.2, abs=0.005)
@@ -217,7 +226,9 @@ def test_a_boss_and_an_arc_and_a_chord_circle_are_recognised() -> None:
 
 def test_what_is_cut_away_later_is_no_feature() -> None:
     program = laps("G3", 5.0) + "G1 X8\nG3 X8 Y0 I-8 J0\nG3 X8 Y0 I-8 J0\n"
-    assert [round(each.measures[0].intended, 3) for each in features(program, machine(0.1)) if each.kind == "bore"] == [19.0]
+    assert [round(each.measures[0].intended, 3) for each in features(program, machine(0.1)) if each.kind == "bore"] == [
+        19.0
+    ]
 
 
 # ---- the play of one axis, sampled ------------------------------------------------------------------------------------
@@ -285,8 +296,9 @@ def test_turning_points_of_arcs_are_their_quadrants() -> None:
     ],
 )  # fmt: skip
 def test_a_force_normal_to_a_circle_makes_it_wrong_on_the_diagonals(sign, name, across, diagonal) -> None:
-    """Path radius 10, lash 0.2, the normal force beats friction everywhere: good X and Y with a small 45-degree diameter mean
-    lash crossed by the cut, not a wrong lash (simulated with the rule that a dragged axis sits on the flank it is pushed to)."""
+    """Path radius 10, lash 0.2, the normal force beats friction everywhere: good X and Y with a small 45-degree
+    diameter mean lash crossed by the cut, not a wrong lash (simulated with the rule that a dragged axis sits on the
+    flank it is pushed to)."""
     seen = look(laps("G3", 10.0), 3.0, PLATE)
     samples = seen.engagement.samples
     x, y = samples.x, samples.y
@@ -325,9 +337,7 @@ def test_a_soft_machine_in_a_heavy_cut_is_dragged_end_to_end() -> None:
     from gcodetool.inspection.materials import material_named
 
     job = Job(cutters=(Cutter("*", 6.0),), stock=StockShape(PLATE, 0.0), material=material_named("aluminium-6082"))
-    program = (
-        "G21 G90\nS10000 M3\nF1000\nG0 X12 Y0 Z5\nG1 Z-3\nG3 X12 Y0 I-12\nG1 X13\nG3 X13 Y0 I-13\nG0 Z5\nM30\n"
-    )
+    program = "G21 G90\nS10000 M3\nF1000\nG0 X12 Y0 Z5\nG1 Z-3\nG3 X12 Y0 I-12\nG1 X13\nG3 X13 Y0 I-13\nG0 Z5\nM30\n"
     soft = audit(program.encode(), job, machine(0.2, friction=Decimal(1)), SETUP)
     stiff = audit(program.encode(), job, machine(0.2, friction=Decimal(500)), SETUP)
     dragged = [each for each in soft.findings if each.code == 501]

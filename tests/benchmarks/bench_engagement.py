@@ -1,7 +1,8 @@
 """Time and memory of the audit on programs of different habits: python -m tests.benchmarks.bench_engagement [MOVES]
 
-Each program is made twice, with MOVES and with twice as many feed motions (half the given number and all of it), so that growth
-shows.  Times are processor seconds of one process; peak memory is that of the process that ran the larger program.
+Each program is made twice, with MOVES and with twice as many feed motions (half the given number and all of it), so
+that growth shows.  Times are processor seconds of one process; peak memory is that of the process that ran the larger
+program.
 """
 
 from __future__ import annotations
@@ -122,7 +123,10 @@ def main() -> None:
     for habit in HABITS:
         half, whole = in_a_process(habit, most // 2), in_a_process(habit, most)
         growth = whole[1] / half[1]
-        print(f"{habit:14} {half[0]:8} {half[1]:7.1f} {whole[0]:8} {whole[1]:7.1f} {growth:7.2f} {whole[2]:6.0f}", flush=True)
+        print(
+            f"{habit:14} {half[0]:8} {half[1]:7.1f} {whole[0]:8} {whole[1]:7.1f} {growth:7.2f} {whole[2]:6.0f}",
+            flush=True,
+        )
 
 
 if __name__ == "__main__":
