@@ -19,10 +19,25 @@ ROOT = Path(__file__).resolve().parent.parent
 PACKAGE = "gcodetool"
 ROWS = ("errors", "machine", "program", "motion", "lash", "inspection", "report", "cli")
 THIRD_PARTY = {"inspection": {"numpy", "shapely"}, "cli": {"typer", "rich"}}
-SHARED_RECORDS = {"gcodetool.inspection.measure_records", "gcodetool.inspection.audit_records"}
-"""Modules of inspection that hold records only: others of inspection, and report, may import them."""
-SHARED_TOOLS = {"gcodetool.inspection.curves", "gcodetool.inspection.machines", "gcodetool.inspection.runs"}
-"""Modules of inspection that the proofs stand on: only others of inspection may import them."""
+SUBJECTS = {
+    "proof": {
+        "curves", "hole_places", "machines", "runs", "verify",
+    },
+    "measuring": {
+        "coupon_tongues", "coupon_vernier", "iso230", "lash_trend", "measure_gcode", "measure_records",
+        "measure_targets", "readings", "readings_findings", "residual", "spring_force", "uncertainty",
+    },
+    "audit": {
+        "audit", "audit_records", "clearing", "cutting_records", "durations", "engagement", "features", "findings",
+        "force", "job_records", "job_sheet", "labels", "lash_path", "limits", "materials", "outlines", "sizes",
+        "spacing", "stock", "swept", "toolpath",
+    },
+}  # fmt: skip
+"""What the modules of inspection are about; a module imports none of another subject."""
+RECORDS = {
+    f"gcodetool.inspection.{name}" for name in ("audit_records", "cutting_records", "job_records", "measure_records")
+}
+"""Modules of inspection that hold records only: report may import them."""
 SINGLE = {"sheet_keys": "machine", "sheet_edit": "machine", "__main__": "cli"}
 """Modules at the top that belong to a row of another name."""
 LONGEST = 400
@@ -77,6 +92,12 @@ def graph(root: Path) -> dict[str, set[str]]:
     return edges
 
 
+def subject(module: str) -> str:
+    """The subject of a module of inspection; a module that is in no list is a subject of its own."""
+    last = module.rpartition(".")[2]
+    return next((name for name, members in SUBJECTS.items() if last in members), last)
+
+
 def wrong_rows(root: Path) -> list[str]:
     found = []
     for name, targets in graph(root).items():
@@ -85,9 +106,9 @@ def wrong_rows(root: Path) -> list[str]:
             there = row(target)
             if ROWS.index(there) > ROWS.index(here):
                 found.append(f"{name} imports {target}, a row below it")
-            if here == there == "inspection" and target not in SHARED_RECORDS | SHARED_TOOLS:
-                found.append(f"{name} imports {target}, its neighbour")
-            if (here, there) == ("report", "inspection") and target not in SHARED_RECORDS:
+            if here == there == "inspection" and subject(name) != subject(target):
+                found.append(f"{name} imports {target}, of another subject")
+            if (here, there) == ("report", "inspection") and target not in RECORDS:
                 found.append(f"{name} imports {target} at run time")
     return found
 

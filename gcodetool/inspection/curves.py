@@ -25,6 +25,7 @@ SURE = 0.0003
 # an axis that stands still near a quadrant point makes a short flat there, which sweeps no angle
 LOST_SWEEP = 0.3
 CHORD_ERROR = 1e-5
+COARSE_CHORDS = 1e-4
 WINDOW = 400
 STEP = 100
 
@@ -77,7 +78,9 @@ def gap(first: Sequence[Piece], second: Sequence[Piece], ease: Ease | None = Non
         found = _walk(first, second)
     if found is None or found.distance > SURE:
         # the walk may have taken a neighbour for the nearest piece; the window sees more of the path
-        wide = by_window(first, second)
+        wide = by_window(first, second, COARSE_CHORDS)
+        if wide.distance <= ALIKE:
+            wide = by_window(first, second)
         found = wide if found is None or wide.distance < found.distance else found
     return found
 

@@ -25,7 +25,9 @@ PIXEL = 0.05
 ABOVE = 0.05
 
 
-def random_program(seed: int, count: int, levels: tuple[float, ...]) -> tuple[str, Moves]:
+def random_program(  # noqa: C901 - one kind of move after the other
+    seed: int, count: int, levels: tuple[float, ...]
+) -> tuple[str, Moves]:
     """Lines, ramps, arcs, whole circles and jumps at some levels, partly outside of the stock."""
     rnd = random.Random(seed)
     moves: Moves = []

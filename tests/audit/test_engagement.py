@@ -69,7 +69,8 @@ def test_width_depth_and_area_are_those_of_the_cut() -> None:
 
 # (Rc, r, ae, inside, outside, straight), degrees: computed from the cosine rule above
 ARCS = [
-    (8.5, 1.5, 0.3, 39.804, 33.720, 36.870), (20.0, 3.0, 1.0, 51.318, 44.901, 48.190), (8.5, 1.5, 1.5, 95.062, 84.938, 90.0),
+    (8.5, 1.5, 0.3, 39.804, 33.720, 36.870), (20.0, 3.0, 1.0, 51.318, 44.901, 48.190),
+    (8.5, 1.5, 1.5, 95.062, 84.938, 90.0),
 ]  # fmt: skip
 
 
@@ -136,7 +137,8 @@ def test_what_is_cut_deeper_is_gone_for_a_later_higher_pass() -> None:
 def test_a_spring_pass_is_told_from_air() -> None:
     program = (
         HEAD
-        + "G0 X-20 Y0 Z5\nG1 Z-3\nG1 X20\nG0 Z5\nG0 X-20\nG1 Z-3\nG1 X20\nG0 Z5\nG0 X-20 Y50\nG1 Z5\nG1 X20\nG1 Z1 X-20\n"
+        + "G0 X-20 Y0 Z5\nG1 Z-3\nG1 X20\nG0 Z5\nG0 X-20\nG1 Z-3\nG1 X20\nG0 Z5\nG0 X-20 Y50\n"
+        + "G1 Z5\nG1 X20\nG1 Z1 X-20\n"
     )
     seen = look(program, D)
     spring = {int(line) for line in seen.path.line[seen.labels.spring]}

@@ -97,7 +97,8 @@ def test_slots_have_their_closed_form() -> None:
     assert found[:3] == pytest.approx((-1.839, 3.647, 1.569), abs=6e-4)
     z, ap, fz, m = 1, 0.5, 0.02, AL6082
     assert found[:3] == pytest.approx((
-        -z * ap * (m.kr * fz / 4 + m.er / PI), z * ap * (m.kt * fz / 4 + m.et / PI), z * ap * (m.ka * fz / PI + m.ea / 2),
+        -z * ap * (m.kr * fz / 4 + m.er / PI), z * ap * (m.kt * fz / 4 + m.et / PI),
+        z * ap * (m.ka * fz / PI + m.ea / 2),
     ))  # fmt: skip
     assert force_of(AL6082, 0.0, PI, 2.0, 0.05, 2)[:3] == pytest.approx((-17.682, 48.102, 22.980), abs=6e-4)
     assert force_of(AL7075, 0.0, PI, 2.0, 0.05, 2)[:3] == pytest.approx((-42.308, 73.619, 15.533), abs=6e-4)
@@ -191,10 +192,11 @@ def test_conventional_turns_from_pushing_off_to_pulling_in(ratio: float, share: 
     assert crossing == pytest.approx(share, abs=6e-4)
 
 
-# ---- the chip --------------------------------------------------------------------------------------------------------
+# ---- the chip ------------------------------------------------------------------------------------------------------
 
 # ae/D, theta in degrees, largest chip / fz, thinning factor, mean chip / fz (computed from the formulas beside it)
-CHIPS = [(0.02, 16.26, 0.2800, 3.5714, 0.1409), (0.05, 25.84, 0.4359, 2.2942, 0.2217), (0.10, 36.87, 0.6, 1.6667, 0.3108),
+CHIPS = [(0.02, 16.26, 0.2800, 3.5714, 0.1409), (0.05, 25.84, 0.4359, 2.2942, 0.2217),
+         (0.10, 36.87, 0.6, 1.6667, 0.3108),
          (0.125, 41.41, 0.6614, 1.5119, 0.3459), (0.2, 53.13, 0.8, 1.25, 0.4314), (0.25, 60.0, 0.8660, 1.1547, 0.4775),
          (0.3, 66.42, 0.9165, 1.0911, 0.5176), (0.4, 78.46, 0.9798, 1.0206, 0.5842), (0.5, 90.0, 1, 1, 0.6366),
          (0.75, 120.0, 1, 1, 0.7162), (1.0, 180.0, 1, 1, 0.6366)]  # fmt: skip
@@ -221,7 +223,7 @@ def test_mean_chip_of_a_handbook_example() -> None:
     assert chip * math.sin(math.radians(45.0)) == pytest.approx(0.0052, abs=5e-5)
 
 
-# ---- Kienzle ----------------------------------------------------------------------------------------------------------
+# ---- Kienzle -------------------------------------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize(
@@ -271,7 +273,7 @@ def test_every_default_has_a_source_a_band_and_a_table_to_edit() -> None:
         assert material.source in as_sheet(material)
 
 
-# ---- programs ----------------------------------------------------------------------------------------------------------
+# ---- programs ------------------------------------------------------------------------------------------------------
 
 
 def test_force_along_a_program_is_that_of_its_engagement_turned_into_the_axes() -> None:
@@ -282,7 +284,8 @@ def test_force_along_a_program_is_that_of_its_engagement_turned_into_the_axes() 
             edge, far = sign * 1.5, sign * 60.0
             corners = [(s * ux - e * uy, s * uy + e * ux) for s, e in ((-30, edge), (30, edge), (30, far), (-30, far))]
             seen = look(
-                f"G21 G90\nS10000 M3\nF1000\nG0 X{-40 * ux:.5f} Y{-40 * uy:.5f} Z5\nG0 Z-2\nG1 X{40 * ux:.5f} Y{40 * uy:.5f}\n",
+                f"G21 G90\nS10000 M3\nF1000\nG0 X{-40 * ux:.5f} Y{-40 * uy:.5f} Z5\nG0 Z-2\n"
+                f"G1 X{40 * ux:.5f} Y{40 * uy:.5f}\n",
                 6.0, tuple(corners),
             )  # fmt: skip
             k = seen.at(6)
@@ -323,7 +326,7 @@ def test_the_peak_of_a_tooth() -> None:
         assert power.peak[seen.at(6)] == pytest.approx(expected, abs=0.06)
 
 
-# ---- what holds an axis ------------------------------------------------------------------------------------------------
+# ---- what holds an axis --------------------------------------------------------------------------------------------
 
 
 def verdict(axis: Axis, force: float, way: float) -> tuple[Hold, float, int]:

@@ -111,7 +111,8 @@ def test_a_printed_material_reads_back(material) -> None:
 @pytest.mark.parametrize(
     ("text", "expected"),
     [
-        ("1=3.175", Cutter("1", 3.175)), ("T02=6,ball,flutes=1", Cutter("2", 6.0, 1, "ball")), ("any=3", Cutter("*", 3.0)),
+        ("1=3.175", Cutter("1", 3.175)), ("T02=6,ball,flutes=1", Cutter("2", 6.0, 1, "ball")),
+        ("any=3", Cutter("*", 3.0)),
         ("*=3,hand=left", Cutter("*", 3.0, hand=-1)), ("4=1,drill", Cutter("4", 1.0, shape="drill", angle=118.0)),
         ("5=6,shape=vee,angle=60,tip=.1", Cutter("5", 6.0, shape="vee", angle=60.0, tip=0.1)),
     ],
@@ -148,7 +149,8 @@ def test_options_are_laid_over_the_sheet() -> None:
 @pytest.mark.parametrize(
     ("values", "fault"),
     [
-        ({"stock": "0,0,1,1"}, "write box:"), ({"stock": "box:0,0,1"}, "two opposite"), ({"stock": "box:a,0,1,1"}, "no number"),
+        ({"stock": "0,0,1,1"}, "write box:"), ({"stock": "box:0,0,1"}, "two opposite"),
+        ({"stock": "box:a,0,1,1"}, "no number"),
         ({"top": -5.0, "bottom": 0.0}, "below the top"), ({"keep_outs": ["box:0,0,1,1"]}, "and the height"),
         ({"speed": -1.0}, "--speed"), ({"material": "unobtainium"}, "the materials are"),
     ],

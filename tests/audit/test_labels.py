@@ -32,7 +32,8 @@ def bored(word: str, path: float, first: float) -> str:
     )
 
 
-# Outside contours: clockwise is climb; inside: counter-clockwise is climb (common practice, no source; right-hand cutter, M3).
+# Outside contours: clockwise is climb; inside: counter-clockwise is climb (right-hand cutter, M3; common practice, no
+# source).
 @pytest.mark.parametrize(("word", "label"), [("G2", "climb"), ("G3", "conventional")])
 def test_outside_contours(word: str, label: str) -> None:
     assert look(ring(word, 22.0), D, BOSS).words()[6] == label
@@ -72,8 +73,9 @@ def test_a_one_sided_cut_becomes_a_slot_at_five_sixths_of_the_cutter(share: floa
     assert look(HEAD + "G0 X-40 Y0 Z5\nG0 Z-2\nG1 X40\n", D, box(-30.0, edge, 30.0, 100.0)).words()[6] == label
 
 
-# Source: Kramer, Proctor, Messina, The NIST RS274/NGC Interpreter - Version 3, NISTIR 6556, tables 12 and 13: a part edge for
-# a cutter of diameter 1 with G41, and the same part written as centre line.  The edge is what table 13 leaves at a distance of 0.5.
+# Source: Kramer, Proctor, Messina, The NIST RS274/NGC Interpreter - Version 3, NISTIR 6556, tables 12 and 13: a part
+# edge for a cutter of diameter 1 with G41, and the same part written as centre line.  The edge here is what table 13
+# leaves at a distance of 0.5.
 CENTRE_LINE = (
     HEAD + "G0 X1.1 Y3.2 Z5\nG0 Z-1\nG2 X2 Y3.5 I0.9 J-1.2\nG2 X3.5 Y2 I0 J-1.5\nG1 Y-1\nG2 X2 Y-2.5 I-1.5 J0\nG1 X-2\n"
     "G2 X-2.9 Y0.2 I0 J1.5\nG1 X1.1 Y3.2\n"
@@ -154,7 +156,7 @@ def test_a_real_adaptive_program_is_nearly_all_climb() -> None:
     assert length[Label.CLIMB] > 0.85 * length[1:].sum()
 
 
-# ---- two flips cancel ------------------------------------------------------------------------------------------------
+# ---- two flips cancel ----------------------------------------------------------------------------------------------
 
 SWAP = {"climb": "conventional", "conventional": "climb"}
 
@@ -205,7 +207,7 @@ def test_m4_alone_does_not_make_a_right_hand_cutter_cut_the_other_way() -> None:
     assert look(program.replace("M3", "M4"), D, stock).words()[6] == look(program, D, stock).words()[6]
 
 
-# ---- flips inside a contour, lines ------------------------------------------------------------------------------------
+# ---- flips inside a contour, lines ---------------------------------------------------------------------------------
 
 
 def test_a_contour_that_crosses_a_slot_flips_where_the_wall_changes_side() -> None:

@@ -41,7 +41,7 @@ def test_a_good_program_draws_notes_only() -> None:
     assert all(each.severity is Severity.NOTE for each in found.findings)
 
 
-# ---- spindle -----------------------------------------------------------------------------------------------------------
+# ---- spindle -------------------------------------------------------------------------------------------------------
 
 
 def test_a_cutter_that_was_never_started() -> None:
@@ -66,7 +66,7 @@ def test_speeds_outside_the_machine_and_above_the_mark_on_the_cutter() -> None:
     assert not codes(judge(HEAD + PASS, least_speed=8000.0, most_speed=12000.0)) & {306, 307}
 
 
-# ---- travel ------------------------------------------------------------------------------------------------------------
+# ---- travel --------------------------------------------------------------------------------------------------------
 
 
 def axes(**travel: tuple[int, int]) -> Machine:
@@ -135,7 +135,7 @@ def test_below_the_stock() -> None:
     assert 308 not in codes(judge(HEAD + PASS.replace("Z-1", "Z-5")))
 
 
-# ---- clamps and rapids ---------------------------------------------------------------------------------------------------
+# ---- clamps and rapids ---------------------------------------------------------------------------------------------
 
 CLAMP = KeepOut("left clamp", box(-45.0, 20.0, -35.0, 30.0), 10.0)
 
@@ -195,7 +195,7 @@ def test_going_home_through_an_unknown_place_is_no_collision() -> None:
     assert 301 not in codes(judge(HEAD + PASS + "G28\nG0 X0 Y0\nG0 Z5\n", stock=StockShape(STOCK.outline, 8.0)))
 
 
-# ---- feeds and time ------------------------------------------------------------------------------------------------------
+# ---- feeds and time ------------------------------------------------------------------------------------------------
 
 
 def test_a_feed_that_an_axis_cannot_reach() -> None:
@@ -235,7 +235,7 @@ def test_inverse_time_and_feed_per_turn() -> None:
     assert per_turn.feed == pytest.approx(86 / 100 * 60)
 
 
-# ---- chips -----------------------------------------------------------------------------------------------------------------
+# ---- chips ---------------------------------------------------------------------------------------------------------
 
 
 def test_chips_too_thin_and_too_thick() -> None:

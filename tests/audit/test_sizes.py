@@ -104,9 +104,9 @@ def test_the_flat_that_is_stated_is_the_flat_that_is_cut() -> None:
     share = np.linspace(0.0, 1.0, 40_001)
     actual = predictor.paths(np.full(len(share), moves[0]), share)[1][0]
     still = np.abs(np.diff(actual[:, 0])) < 1e-12
-    runs = np.split(np.diff(actual[:, 1]), np.flatnonzero(np.diff(still.astype(int))) + 1)
-    longest = max(abs(float(run.sum())) for run, quiet in zip(runs, np.split(still, np.flatnonzero(np.diff(still.astype(int))) + 1),
-                                                            strict=True) if quiet[0])  # fmt: skip
+    cuts = np.flatnonzero(np.diff(still.astype(int))) + 1
+    runs = zip(np.split(np.diff(actual[:, 1]), cuts), np.split(still, cuts), strict=True)
+    longest = max(abs(float(run.sum())) for run, quiet in runs if quiet[0])
     assert longest == pytest.approx(math.sqrt(2 * 10 * 0.2 - 0.04), abs=2e-3)
     assert longest == pytest.approx(1.990, abs=2e-3)
 
@@ -231,7 +231,7 @@ def test_what_is_cut_away_later_is_no_feature() -> None:
     ]
 
 
-# ---- the play of one axis, sampled ------------------------------------------------------------------------------------
+# ---- the play of one axis, sampled ---------------------------------------------------------------------------------
 
 
 @given(st.lists(st.floats(-5, 5), min_size=2, max_size=40), st.floats(0.0, 1.0), st.sampled_from([1, -1]))
@@ -285,7 +285,7 @@ def test_turning_points_of_arcs_are_their_quadrants() -> None:
     assert side[-1] == 1
 
 
-# ---- a cut that drags the axes across their lash -------------------------------------------------------------------------
+# ---- a cut that drags the axes across their lash -------------------------------------------------------------------
 
 
 @pytest.mark.parametrize(
@@ -303,8 +303,11 @@ def test_a_force_normal_to_a_circle_makes_it_wrong_on_the_diagonals(sign, name, 
     samples = seen.engagement.samples
     x, y = samples.x, samples.y
     round_ = seen.path.plane[samples.move] == 1
-    push = [Holding(letter, np.zeros(0, np.int64), np.zeros(0), np.where(round_, sign * np.sign(value), 0).astype(np.int64))
-            for letter, value in (("X", x), ("Y", y))]  # fmt: skip
+    none = np.zeros(0)
+    push = [
+        Holding(letter, none.astype(np.int64), none, np.where(round_, sign * np.sign(value), 0).astype(np.int64))
+        for letter, value in (("X", x), ("Y", y))
+    ]
     predictor = Predictor(seen.path, machine(0.2), samples, push)
     moves = np.flatnonzero(seen.path.plane == 1)
     share = np.linspace(0.0, 1.0, 1441)
