@@ -13,7 +13,7 @@ import typer
 from typer.core import TyperGroup
 
 from gcodetool import __version__
-from gcodetool.cli import compensate, machine_sheet, measure, reversals, verify
+from gcodetool.cli import audit, compensate, machine_sheet, measure, reversals, verify
 from gcodetool.cli.exit_codes import ExitCode
 from gcodetool.cli.streams import OutputRefused, ReaderLeft, ReadFailed, WriteFailed, flush_standard_output
 from gcodetool.cli.terminal import say
@@ -89,6 +89,7 @@ app = typer.Typer(
 app.command("compensate")(compensate.command)
 app.command("verify")(verify.command)
 app.command("reversals")(reversals.command)
+app.command("audit")(audit.command)
 app.add_typer(machine_sheet.app, name="machine")
 app.add_typer(measure.app, name="measure")
 

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from typing import Annotated
 
 import typer
 
 from gcodetool import __version__
+from gcodetool.cli.job_options import JobOption, StockOption, ToolOption, job_from
 from gcodetool.cli.options import (
     DatumOption,
     DecimalsOption,
@@ -36,6 +37,7 @@ from gcodetool.cli.stated import (
 from gcodetool.cli.streams import ENCODING, Draft, OutputRefused, Source, draft, open_source, standard_output
 from gcodetool.cli.terminal import say, watched
 from gcodetool.errors import ProofError, SheetError
+from gcodetool.inspection.job_records import Job
 from gcodetool.lash.compensate import MARK, Compensator
 from gcodetool.lash.reversals import statistics
 from gcodetool.lash.running import Settings
@@ -67,6 +69,12 @@ def command(
     stops: Annotated[
         bool, typer.Option("--stops", help="List every take-up that stops the tool inside the cut.")
     ] = False,
+    label: Annotated[
+        bool, typer.Option("--label", help="Write climb, conventional, slot or air as a comment where it changes.")
+    ] = False,
+    job: JobOption = None,
+    tool: ToolOption = None,
+    stock: StockOption = None,
     live: Annotated[
         bool, typer.Option("--live", help="Send each line as soon as it can be, without the proof; for a live link.")
     ] = False,
@@ -93,6 +101,8 @@ def command(
     tell = _hush if quiet else _say_lines
     sheet_words = sheet_lines(sheet, machine is not None)
     if live:
+        if label:
+            raise SheetError("--label needs the whole program, so it cannot go with --live")
         if output != "-":
             raise OutputRefused("a live program goes to standard output; leave -o out")
         with open_source(program, name, live=True) as source:
@@ -101,7 +111,8 @@ def command(
         tell(compensation_lines(tally, sheet, None, sheet_words))
         return
     with draft(output, force=force, inputs=[program]) as result, open_source(program, name) as source:
-        _whole(source, result, sheet, settings, again, stops, sheet_words, tell)
+        labels = _labels(source, sheet, settings, job_from(job, tools=tool, stock=stock)) if label else None
+        _whole(source, result, sheet, settings, again, stops, labels, sheet_words, tell)
 
 
 def _say_lines(lines: list[str]) -> None:
@@ -126,6 +137,20 @@ def header(machine: Machine) -> str:
     return f"{MARK} {__version__}: {lash_line(machine).replace('(mm)', 'mm')}"
 
 
+def _labels(source: Source, machine: Machine, settings: Settings, job: Job) -> dict[int, str]:
+    """The label of every line with feed motion, from the material that is really left."""
+    from gcodetool.inspection.audit import labels_by_line
+
+    setup = Setup(
+        units=machine.units,
+        offsets=settings.offsets,
+        lengths=settings.lengths,
+        skip_deletable=bool(settings.block_delete),
+        unplaced=ORDER,
+    )
+    return labels_by_line(b"".join(source.lines()), job, setup)
+
+
 def _whole(
     source: Source,
     result: Draft,
@@ -133,6 +158,7 @@ def _whole(
     settings: Settings,
     again: bool,
     stops: bool,
+    labels: Mapping[int, str] | None,
     sheet_words: list[str],
     tell: Callable[[list[str]], None],
 ) -> None:
@@ -148,7 +174,7 @@ def _whole(
 
     rewriting = Compensator(machine, settings, write, header(machine), again)
     rewriting.tally.keep_stops = stops
-    tally = rewriting.rewrite(blocks(watched(source.lines(), source.size, "rewriting")))
+    tally = rewriting.rewrite(blocks(watched(source.lines(), source.size, "rewriting")), labels)
     result.write("".join(held).encode(ENCODING))
     verdict = verify(
         lambda: blocks(watched(source.lines(), source.size, "proving")),

@@ -128,10 +128,17 @@ def forces(
     along, left, axial, tangential = (np.where(quiet, np.nan, part) for part in (along, left, axial, tangential))
     speed = math.pi * 2.0 * cutters.radius[tool] * path.speed[samples.move] / 60e3
     return Forces(
-        fx=along * samples.fx - left * samples.fy, fy=along * samples.fy + left * samples.fx, fz=-axial,
-        along=along, side=left, peak=_peak(material, average, load, thick, cut.depth),
-        power=tangential * speed, chip_load=load, mean_chip=average, thinning=thinning,
-    )  # fmt: skip
+        fx=along * samples.fx - left * samples.fy,
+        fy=along * samples.fy + left * samples.fx,
+        fz=-axial if material.ka or material.ea else none,
+        along=along,
+        side=left,
+        peak=_peak(material, average, load, thick, cut.depth),
+        power=tangential * speed,
+        chip_load=load,
+        mean_chip=average,
+        thinning=thinning,
+    )
 
 
 def _share(part: Floats, whole: Floats) -> Floats:

@@ -129,26 +129,32 @@ def predict(shapes: Sequence[Shape], predictor: Predictor) -> list[Feature]:
 
 
 def _stretch(shape: Shape, predictor: Predictor) -> tuple[Ints, Floats]:
-    """Samples along the moves of a shape: even steps, quadrant points, and the ends of the flats after them."""
+    """Samples along the moves of a shape: even steps on the last turn, and all places at which an axis turns or starts."""
     path, moves, shares = predictor.path, [], []
+    least = LEAST_SAMPLES if len(shape.moves) < 12 else 4
     for k in shape.moves:
         sweep = float(path.sweep[k]) if path.plane[k] == 1 else 0.0
-        count = max(LEAST_SAMPLES if len(shape.moves) < 12 else 4, math.ceil(PER_TURN * abs(sweep) / (2.0 * math.pi)))
-        share = np.linspace(0.0, 1.0, count + 1)
+        turns = abs(sweep) / (2.0 * math.pi)
+        count = max(least, math.ceil(PER_TURN * min(turns, 1.0)))
+        share = np.linspace(max(0.0, 1.0 - 1.0 / turns) if sweep else 0.0, 1.0, count + 1)
         if sweep:
-            special = (_special_angles(float(path.radius[k]), sweep, predictor) - path.angle[k]) / sweep
-            share = np.union1d(share, special[(special > 0.0) & (special < 1.0)])
+            special = _special_shares(float(path.angle[k]), sweep, float(path.radius[k]), predictor)
+            share = np.union1d(share, np.concatenate([[0.0], special]))
         moves.append(np.full(len(share), k, np.int64))
         shares.append(share)
     return np.concatenate(moves), np.concatenate(shares)
 
 
-def _special_angles(radius: float, sweep: float, predictor: Predictor) -> Floats:
-    """Quadrant points, and the angles acos(1 - B/R) past them at which an axis with lash B left gets into contact."""
-    quadrants = np.arange(-40, 41) * 0.5 * math.pi
-    left = {case.axes[letter].lash - (case.axes[letter].compensated or 0.0) for case in predictor.cases for letter in PLAN}
-    past = [math.acos(1.0 - lash / radius) for lash in left if 0.0 < lash < radius]
-    return np.concatenate([quadrants, *(quadrants + math.copysign(delta, sweep) for delta in past)])
+def _special_shares(start: float, sweep: float, radius: float, predictor: Predictor) -> Floats:
+    """Shares of quadrant points, and of the angles acos(1 - B/R) past them at which lash B that is left has been crossed."""
+    axes = [case.axes[letter] for case in predictor.cases for letter in PLAN]
+    left = {axis.lash - (axis.compensated or 0.0) for axis in axes}
+    past = [0.0, *(math.acos(1.0 - lash / radius) for lash in left if 0.0 < lash < radius)]
+    low, high = sorted((start, start + sweep))
+    quarter = 0.5 * math.pi
+    quadrants = np.arange(math.floor(low / quarter) - 2, math.ceil(high / quarter) + 3) * quarter
+    shares = np.concatenate([quadrants + math.copysign(delta, sweep) - start for delta in past]) / sweep
+    return shares[(shares > 0.0) & (shares < 1.0)]
 
 
 def _both_walls(shape: Shape, place: Sequence[float], dragged: bool) -> list[Wall]:

@@ -94,7 +94,7 @@ class Outline:
 
     def __init__(self, outline: tuple[Point, ...]) -> None:
         """Take an outline of three corners or more."""
-        self.polygon = shapely.make_valid(shapely.Polygon(outline))
+        self.polygon = shapely.Polygon(outline).buffer(0.0)
         shapely.prepare(self.polygon)
         rings = shapely.get_parts(shapely.boundary(self.polygon))
         pairs = [np.concatenate([c[:-1], c[1:]], axis=1) for c in (shapely.get_coordinates(ring) for ring in rings)]

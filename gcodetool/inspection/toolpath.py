@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from array import array
 from collections.abc import Iterable, Sequence
 
 import numpy as np
@@ -24,6 +25,8 @@ CHORD = math.radians(7.5)
 # a piece of an arc in XY turns at most this far, so that it cannot meet itself
 SEXTANT = math.pi / 3.0
 _FINE = 1e-9
+# columns of a row while a program is read, and the one that marks moves from an unknown place
+WIDE, UNPLACED = 23, 21
 
 
 def read_path(blocks: Iterable[Block], job: Job, setup: Setup) -> Path:
@@ -34,13 +37,15 @@ def read_path(blocks: Iterable[Block], job: Job, setup: Setup) -> Path:
     Refusal, and SheetError where a feed motion uses a tool that the job does not know.
     """
     controller = Controller(setup)
-    rows: list[tuple[object, ...]] = []
+    rows = array("d")
     tools: dict[str, int] = {}
     systems: list[str] = []
     chain, base = 0, (0.0, 0.0, 0.0)
     for happening in controller.run(blocks):
         if isinstance(happening, Event):
             chain += 1
+            if happening.what == "home" and not setup.offsets and rows and rows[-WIDE] == happening.line:
+                rows[UNPLACED - WIDE] = 1.0  # a machine position, which has no place among those of the program
             continue
         if happening.start == happening.end and happening.arc is None:
             continue
@@ -50,7 +55,7 @@ def read_path(blocks: Iterable[Block], job: Job, setup: Setup) -> Path:
             base = base if len(systems) > 1 else _base(setup, systems[0])
         unknown = bool(controller.unplaced) and any(letter in controller.unplaced for letter in "XYZ")
         length = controller.frames.length / QUANTA_PER_MM
-        rows.append(_row(happening, _tool(happening, job.cutters, tools), length, unknown, chain, job))
+        rows.extend(_row(happening, _tool(happening, job.cutters, tools), length, unknown, chain, job))
     placed = "".join(sorted(setup.offsets.get(systems[0], {}))) if systems else ""
     return _columns(rows, base, placed, tuple(systems))
 
@@ -86,7 +91,7 @@ def _tool(move: Move, cutters: Sequence[Cutter], seen: dict[str, int]) -> int:
     return max(found, 0)
 
 
-def _row(move: Move, tool: int, offset: float, unknown: bool, chain: int, job: Job) -> tuple[object, ...]:
+def _row(move: Move, tool: int, offset: float, unknown: bool, chain: int, job: Job) -> tuple[float, ...]:
     start = [value / QUANTA_PER_MM for value in move.start]
     end = [value / QUANTA_PER_MM for value in move.end]
     turning = any(move.start[k] != move.end[k] for k in (3, 4, 5))
@@ -131,10 +136,8 @@ def _feed(move: Move, length: float, speed: float | None, job: Job) -> float:
     return feed
 
 
-def _columns(
-    rows: list[tuple[object, ...]], base: tuple[float, float, float], placed: str, systems: tuple[str, ...]
-) -> Path:
-    table = np.array(rows, float).reshape(len(rows), 23)
+def _columns(rows: array[float], base: tuple[float, float, float], placed: str, systems: tuple[str, ...]) -> Path:
+    table = np.frombuffer(rows, np.float64).reshape(-1, WIDE)
     whole = table[:, [0, 8, 17, 18]].astype(np.int64)
     plane, centre = whole[:, 1], table[:, 9:11].copy()
     for number, pair in enumerate(PLANE_PAIRS):

@@ -8,7 +8,7 @@ and the few lines held for the slot are kept, so memory does not grow with the p
 from __future__ import annotations
 
 import re
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Iterator, Mapping
 
 from gcodetool.errors import Refusal
 from gcodetool.lash import curved, drilling, straight
@@ -27,6 +27,7 @@ from gcodetool.program.rewrite import join_words
 
 Mover = Callable[[Running, Command], None]
 MARK = "lash taken up by gcodetool"
+LABEL = "cut:"
 MEASURING = "gcodetool measure: run as it is, never compensate"
 _MARK_LINES = 50
 _LOOKS_LIKE_MOTION = re.compile(r"[^(;]*[Gg]0*[0-3](?!\d)[^(;]*[XYZxyz]")
@@ -54,6 +55,8 @@ class Compensator:
             Kind.CYCLE: lambda run, command: drilling.cycle(run, self._drilling, command),
         }
         self._header = header
+        self._style = "({})"
+        self._styled = False
         self._again = again
         self._ended = False
         self._live = False
@@ -63,11 +66,25 @@ class Compensator:
         """Totals so far."""
         return self.run.tally
 
-    def rewrite(self, blocks: Iterable[Block]) -> Tally:
-        """Take all blocks and finish; raises Refusal at the first block that cannot be rewritten."""
-        self._quick.stream(blocks)
+    def rewrite(self, blocks: Iterable[Block], labels: Mapping[int, str] | None = None) -> Tally:
+        """Take all blocks and finish; raises Refusal at the first block that cannot be rewritten.
+
+        ``labels`` by line number are written as comments of their own, each where it changes.
+        """
+        self._quick.stream(self._labelled(blocks, labels) if labels else blocks)
         self.finish()
         return self.tally
+
+    def _labelled(self, blocks: Iterable[Block], labels: Mapping[int, str]) -> Iterator[Block]:
+        """The same blocks; before one with another label than the last, the label goes out as a comment."""
+        last = ""
+        for block in blocks:
+            label = labels.get(block.number, last)
+            if label != last:
+                text = self._style.format(f"{LABEL} {label}")
+                self.run.out.put(text + (block.ending or self.run.usual_ending))
+                last = label
+            yield block
 
     def finish(self) -> None:
         """Write out what is still held."""
@@ -129,10 +146,12 @@ class Compensator:
         self.run.out.put(text + command.block.ending)
 
     def _write_header(self, text: str, ending: str) -> None:
-        if self._header:
-            line = f"; {self._header}" if ";" in text and "(" not in text else f"({self._header})"
-            self.run.out.put(line + (ending or self.run.usual_ending))
-            self._header = ""
+        if not self._styled:
+            # the program's own way of writing comments shows in its first line
+            self._style = "; {}" if ";" in text and "(" not in text else "({})"
+            self._styled = True
+            if self._header:
+                self.run.out.put(self._style.format(self._header) + (ending or self.run.usual_ending))
 
     # ---- one block ------------------------------------------------------------------------------------------------
 

@@ -17,6 +17,7 @@ READING = {
     "compensate": ["compensate", *LASH, "--units", "mm", "-"],
     "reversals": ["reversals", "--units", "mm", "-"],
     "verify": ["verify", *LASH, "--units", "mm", "-", "{file}"],
+    "audit": ["audit", *LASH, "--units", "mm", "-"],
 }
 WITHOUT_PROGRAM = {"machine", "measure"}
 READERS = [verb for verb in VERBS if verb in READING]
