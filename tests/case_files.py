@@ -1,8 +1,9 @@
 """Case files of the rewriter: read them, run them through the real command, hold the result against what they say.
 
-A case file begins with ``flags:`` and the options of ``gcodetool compensate``; lines that begin with ``note:`` may follow.  Then
-comes the program.  A line ``==== expected`` ends it and begins the expected output; a line ``==== refused: line 3 G41`` says
-instead at which line and words the program is refused.  A file with neither must stay as it is, byte for byte.
+A case file begins with ``flags:`` and the options of ``gcodetool compensate``; lines that begin with ``note:`` may
+follow.  Then comes the program.  A line ``==== expected`` ends it and begins the expected output; a line
+``==== refused: line 3 G41`` says instead at which line and words the program is refused.  A file with neither must
+stay as it is, byte for byte.
 """
 
 from __future__ import annotations

@@ -1,11 +1,12 @@
 """What lash does to simple parts, in closed form, and what is left of it after ``gcodetool compensate``.
 
-Before: the original is driven through the play of each axis and measured.  After: the real command rewrites it, the result is
-driven through the same play, and the part has its intended size to within output rounding.
+Before: the original is driven through the play of each axis and measured.  After: the real command rewrites it, the
+result is driven through the same play, and the part has its intended size to within output rounding.
 
-All values are derived from the friction-dominated model (the table stays put until the play is used up) and were checked by a
-separate simulation; ISO 230-4's circular test measures the same effects.  Lash B, path radius R, both axes alike where
-nothing else is said.  The model there is two-sided (half of the lash to each side), so positions are compared after adding B / 2.
+All values are derived from the friction-dominated model (the table stays put until the play is used up) and were
+checked by a separate simulation; ISO 230-4's circular test measures the same effects.  Lash B, path radius R, both axes
+alike where nothing else is said.  The model there is two-sided (half of the lash to each side), so positions are
+compared after adding B / 2.
 """
 
 from __future__ import annotations
@@ -83,7 +84,7 @@ def compensated(program: str, lash: Mapping[str, float]) -> bytes:
 
 
 def after(program: str, lash: Mapping[str, float], told: Mapping[str, float] | None = None) -> Points:
-    """X and Y of the feeds of the compensated program on the machine; the datum side is where command and table agree."""
+    """X and Y of the feeds of the compensated program on the machine."""
     result = compensated(program, told or lash)
     paths = [points for move, points in driven(result, lash) if not move.rapid]
     return np.vstack(paths)[:, :2]
@@ -116,7 +117,7 @@ def radius_at(points: Points, degrees: float) -> float:
 def flat_of_wall(path: Points, reach: float) -> float:
     """Length of the straight at the top of the wall that a cutter leaves; ``reach`` is + outside the path, - inside.
 
-    A place at the height of the straight is on the wall if the middle of the cutter comes as near as its radius, no nearer.
+    A place at that height is on the wall if the middle of the cutter comes as near as its radius and no nearer.
     """
     way = LineString(path)
     height = path[:, 1].max() + reach
@@ -203,7 +204,7 @@ def test_a_wrong_value_leaves_the_difference(told: float, extent: float) -> None
 
 @pytest.mark.parametrize(("cutter", "flat", "high"), [(1.5, 1.833, 0.0769), (3.0, 1.661, 0.0744)])
 def test_a_bored_hole_is_undersize_by_the_lash(cutter: float, flat: float, high: float) -> None:
-    """Radius 10, B 0.2: 19.8 across X and Y; the flat is that of the smaller path, with a fillet of the cutter after it."""
+    """Radius 10, B 0.2: 19.8 across X and Y; the flat is that of the smaller path, then a fillet of the cutter."""
     path = last_lap("G3", 10 - cutter, {"x": 0.2, "y": 0.2})
     wall = np.array(Polygon(path).buffer(cutter, quad_segs=2000).exterior.coords)
     assert np.ptp(wall, axis=0) == pytest.approx([19.8, 19.8], abs=1e-4)

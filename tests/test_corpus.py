@@ -1,4 +1,4 @@
-"""Real programs, as CAM systems wrote them for people's own parts: rewritten and proved, or refused for a stated reason.
+"""Real programs, as CAM systems wrote them for people's own parts: rewritten and proved, or refused for a reason.
 
 They are no part of the project; where the folder beside it is absent these tests are skipped.
 """

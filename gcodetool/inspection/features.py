@@ -27,6 +27,8 @@ OFF_CIRCLE = 0.01
 # an arc that turns less than this is no feature of its own
 LEAST_ARC = math.radians(15.0)
 MOST_SHAPES = 4000
+# the shortest wall, mm, and the angle by which lines of one wall may differ, rad
+LEAST_WALL, SAME_WAY = 1.0, 1e-4
 TURN = 2.0 * math.pi
 
 Stands = Callable[[Floats, Floats, Floats], Flags]
@@ -46,7 +48,6 @@ def shapes(path: Path, cutters: tuple[Cutter, ...], labels: Labels, stands: Stan
     loose = np.array([k for k in np.flatnonzero(feed & (path.plane == 1)) if k not in used], np.int64)
     found.extend(_arcs(path, radius, loose[np.abs(path.sweep[loose]) >= LEAST_ARC], walls))
     straight = feed & (path.plane == 0) & (labels.kind == Kind.LEVEL)
-    straight &= path.length >= np.maximum(2.0 * radius, 1.0)
     straight[list(used)] = False
     found.extend(_straight(path, radius, np.flatnonzero(straight), walls))
     return _deepest(found)[:MOST_SHAPES]
@@ -184,20 +185,37 @@ def _arcs(path: Path, radius: Floats, moves: Ints, walls: _Walls) -> Iterator[Sh
 
 
 def _straight(path: Path, radius: Floats, moves: Ints, walls: _Walls) -> Iterator[Shape]:
-    if not len(moves):
-        return
-    step = path.end[moves, :2] - path.start[moves, :2]
-    way = step / np.hypot(step[:, 0], step[:, 1])[:, None]
-    votes = np.zeros((2, len(moves)))
+    """Walls and slots; lines that go on in one direction are one."""
+    first, last = _straight_runs(path, moves)
+    step = path.end[last, :2] - path.start[first, :2]
+    length = np.hypot(step[:, 0], step[:, 1])
+    long = length >= np.maximum(2.0 * radius[last], LEAST_WALL)
+    first, last, step = first[long], last[long], step[long]
+    way = step / length[long, None]
+    votes = np.zeros((2, len(first)))
     for share in (0.25, 0.5, 0.75):
-        spot = path.start[moves, :2] + share * step
-        votes += walls.beside(moves, spot[:, 0], spot[:, 1], way[:, 0], way[:, 1])
-    for k, (fx, fy), left, right in zip(moves.tolist(), way.tolist(), votes[0] >= 2, votes[1] >= 2, strict=True):
+        spot = path.start[first, :2] + share * step
+        votes += walls.beside(last, spot[:, 0], spot[:, 1], way[:, 0], way[:, 1])
+    sides = zip(first.tolist(), last.tolist(), way.tolist(), votes[0] >= 2, votes[1] >= 2, strict=True)
+    for begin, end, (fx, fy), left, right in sides:
+        run = list(range(begin, end + 1))
         if left and right:
-            yield _shape(path, radius, "slot", [k], 0, normal=(-fy, fx))
+            yield _shape(path, radius, "slot", run, 0, normal=(-fy, fx))
         elif left or right:
             sign = 1.0 if left else -1.0
-            yield _shape(path, radius, "wall", [k], int(sign), normal=(-sign * fy, sign * fx))
+            yield _shape(path, radius, "wall", run, int(sign), normal=(-sign * fy, sign * fx))
+
+
+def _straight_runs(path: Path, moves: Ints) -> tuple[Ints, Ints]:
+    """First and last of each run of consecutive lines in one direction and at one height."""
+    step = path.end[moves, :2] - path.start[moves, :2]
+    moves = moves[np.hypot(step[:, 0], step[:, 1]) > 1e-9]
+    step = path.end[moves, :2] - path.start[moves, :2]
+    way = step / np.hypot(step[:, 0], step[:, 1])[:, None]
+    turned = np.abs(way[1:, 0] * way[:-1, 1] - way[1:, 1] * way[:-1, 0]) > SAME_WAY
+    turned |= (way[1:] * way[:-1]).sum(axis=1) < 0.0
+    apart = turned | (moves[1:] != moves[:-1] + 1) | (path.end[moves[1:], 2] != path.end[moves[:-1], 2])
+    return moves[np.concatenate([[True], apart])[: len(moves)]], moves[np.concatenate([apart, [True]])[: len(moves)]]
 
 
 def _holes(path: Path, radius: Floats, labels: Labels) -> Iterator[Shape]:

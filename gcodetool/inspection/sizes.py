@@ -25,6 +25,8 @@ from gcodetool.machine import Axis, Machine
 PLAN = "XY"
 PER_TURN = 1440
 LEAST_SAMPLES = 48
+# sides of a quarter of a round wall; a path shorter than so many cutter radii is taken as a line
+QUARTER, SMALL = 180, 6.0
 # pairs are looked for among at most this many
 MOST_WALLS, MOST_HOLES = 400, 2000
 Variant = Mapping[str, AxisCase]
@@ -129,7 +131,7 @@ def predict(shapes: Sequence[Shape], predictor: Predictor) -> list[Feature]:
 
 
 def _stretch(shape: Shape, predictor: Predictor) -> tuple[Ints, Floats]:
-    """Samples along the moves of a shape: even steps on the last turn, and all places at which an axis turns or starts."""
+    """Samples along the moves of a shape: even steps on the last turn, and where an axis turns or gets into contact."""
     path, moves, shares = predictor.path, [], []
     least = LEAST_SAMPLES if len(shape.moves) < 12 else 4
     for k in shape.moves:
@@ -146,7 +148,7 @@ def _stretch(shape: Shape, predictor: Predictor) -> tuple[Ints, Floats]:
 
 
 def _special_shares(start: float, sweep: float, radius: float, predictor: Predictor) -> Floats:
-    """Shares of quadrant points, and of the angles acos(1 - B/R) past them at which lash B that is left has been crossed."""
+    """Shares of quadrant points, and of the angles acos(1 - B/R) past them at which lash B has been crossed."""
     axes = [case.axes[letter] for case in predictor.cases for letter in PLAN]
     left = {axis.lash - (axis.compensated or 0.0) for axis in axes}
     past = [0.0, *(math.acos(1.0 - lash / radius) for lash in left if 0.0 < lash < radius)]
@@ -195,11 +197,20 @@ def _last_turn(wanted: Floats, shape: Shape) -> Flags:
     return mark
 
 
+def _swept(path: Floats, radius: float) -> shapely.Geometry:
+    still = np.ptp(path, axis=0).max() < 1e-9
+    spine = shapely.Point(path[0]) if still else shapely.LineString(path)
+    return shapely.Polygon(shapely.get_exterior_ring(spine.buffer(radius, quad_segs=QUARTER)))
+
+
 class _Ring:
     """The wall that a closed path leaves at a distance from it (negative: inside)."""
 
     def __init__(self, path: Floats, offset: float) -> None:
-        wall = shapely.Polygon(path).buffer(0.0).buffer(offset, quad_segs=180)
+        wall = shapely.Polygon(path).buffer(0.0)
+        small = wall.length < SMALL * offset
+        # a path that lash has nearly closed to a line has no inside; what the cutter sweeps along it has
+        wall = _swept(path, offset) if small else wall.buffer(offset, quad_segs=QUARTER)
         self._wall = wall
         x0, y0, x1, y1 = wall.bounds if not wall.is_empty else (0.0, 0.0, 0.0, 0.0)
         self.wide, self.tall = x1 - x0, y1 - y0

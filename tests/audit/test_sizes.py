@@ -26,9 +26,14 @@ from gcodetool.inspection.job_records import Cutter, Job, StockShape
 from gcodetool.inspection.lash_path import AxisCase, AxisState, follow, start_state, states_before, turning_points
 from gcodetool.inspection.outlines import Outline, box, disc
 from gcodetool.inspection.sizes import Predictor, predict
+from gcodetool.lash.path import Follower
 from gcodetool.lash.play import play
 from gcodetool.machine import Axis, Machine
+from gcodetool.motion.controller import Controller
+from gcodetool.motion.moves import Move
+from gcodetool.program.blocks import blocks_of
 from tests.audit.conftest import BIG, HEAD, SETUP, look
+from tests.audit.test_against_raster import random_program
 
 PLATE = box(-60.0, -60.0, 60.0, 60.0)
 
@@ -166,6 +171,13 @@ def test_a_rib_between_two_slots_is_found() -> None:
     assert ribs == pytest.approx({3.0: 2.9, 7.0: 7.0, 37.0: 36.9})
 
 
+def test_a_wall_written_in_many_pieces_is_one_wall() -> None:
+    lines = "".join(f"G1 X{x}\n" for x in range(-19, 21))
+    program = HEAD + "G0 X-20 Y0 Z5\nG1 Z-1\n" + lines + "G0 Z5\nG0 X-30 Y20\nG1 Z-1\nG1 X30\n"
+    slots = [each for each in features(program, machine(0.1)) if each.kind == "slot"]
+    assert sorted(each.lines for each in slots) == [(6, 45), (49, 49)]
+
+
 def holes(*places: tuple[float, float]) -> str:
     return HEAD + "G0 Z5\n" + "".join(f"G0 X{x} Y{y}\nG1 Z-2\nG0 Z5\n" for x, y in places)
 
@@ -283,6 +295,26 @@ def test_turning_points_of_arcs_are_their_quadrants() -> None:
     actual, side = states_before(seen.path, 0, AxisCase(0.2, None, -1))
     assert actual[-1] == pytest.approx(10.0 - 0.2)
     assert side[-1] == 1
+
+
+@pytest.mark.parametrize("datum", [1, -1])
+def test_the_states_along_a_program_are_those_of_the_follower_that_the_proof_uses(datum: int) -> None:
+    program, _ = random_program(5, 30, (-1.0,))
+    seen = look(program, 3.0, BIG)
+    follower = Follower({"X": 0.13, "Y": 0.09}, {"X": datum, "Y": -datum}, (0,) * 6, {"X": datum, "Y": -datum})
+    mine = [
+        states_before(seen.path, k, AxisCase(lash, None, side))[0]
+        for k, lash, side in ((0, 0.13, datum), (1, 0.09, -datum))
+    ]
+    moves = [each for each in Controller(SETUP).run(blocks_of(program.encode())) if isinstance(each, Move)]
+    number = 0
+    for move in moves:
+        for _ in follower.drive(move):
+            pass
+        if move.start != move.end or move.arc is not None:
+            number += 1
+            assert follower.actual[:2] == pytest.approx([mine[0][number], mine[1][number]], abs=1e-6)
+    assert number == seen.path.count
 
 
 # ---- a cut that drags the axes across their lash -------------------------------------------------------------------

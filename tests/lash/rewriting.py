@@ -48,7 +48,7 @@ def sheet(
 
 
 def stated(**options: Any) -> Settings:
-    """What the operator states: ``start``, ``offset``, ``length`` (lists of texts), ``block_delete``, ``look_ahead``."""
+    """What the operator states: ``start``, ``offset``, ``length`` (texts), ``block_delete``, ``look_ahead``."""
     values = {name: options.get(name) for name in STATED}
     values["look_ahead"] = 32 if values["look_ahead"] is None else values["look_ahead"]
     return settings_from(**values)  # type: ignore[arg-type]

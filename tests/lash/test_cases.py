@@ -1,4 +1,4 @@
-"""Every case file through the real command; the expected outputs before the oracle; every row of the code table has a case."""
+"""Every case file through the real command, its expected output before the oracle; every code has one."""
 
 from __future__ import annotations
 
@@ -15,7 +15,7 @@ from tests.lash.rewriting import judged
 CASES = all_cases()
 CHANGING = [case for case in CASES if case.expected is not None]
 UNREAD_BY_THE_ORACLE = ("m-unknown", "pass-codes-of-some-controllers", "style-comment-never-closed")
-"""Programs with words that the oracle's controller stops at; two must stay as they are, the third is a bracket left open."""
+"""Programs that the oracle's controller stops at: two must stay as they are, the third has a bracket left open."""
 
 
 def shown(case: Case, output: bytes) -> str:

@@ -1,4 +1,4 @@
-"""Cycles and probes in the rewriter: bottoms and places exact, what cannot be exact refused, zero set where the tool is."""
+"""Cycles and probes in the rewriter: places and bottoms exact or refused, zero set where the tool is."""
 
 from __future__ import annotations
 

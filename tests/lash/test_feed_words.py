@@ -42,7 +42,8 @@ def rewritten(program: str, lash: dict[str, str] = LASH, head: str = "G21 G90", 
         # arcs
         (
             "G2 X20 Y0 I10 F100",
-            "G1 X0.1000 Y0.1000 F50\nG2 X10.1000 Y10.1000 I10 F100\nG1 Y10.0000 F50\nG2 X20.1000 Y0.0000 I0.0000 J-10.0000 F100",
+            "G1 X0.1000 Y0.1000 F50\nG2 X10.1000 Y10.1000 I10 F100\n"
+            "G1 Y10.0000 F50\nG2 X20.1000 Y0.0000 I0.0000 J-10.0000 F100",
         ),
         # rapids in between do not ask for a feed
         ("G1 X5 F100\nX2\nG0 Y-1\nG1 Y-2", "G1 X0.1000 F50\nG1 X5.1000 F100\nG1 X5.0000 F50\nX2 F100\nG0 Y-1\nG1 Y-2"),

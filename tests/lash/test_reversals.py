@@ -33,7 +33,7 @@ def found(program: str, ripple: dict[str, int] | None = None) -> list[tuple[str,
 
 
 def sampled(program: bytes) -> Iterator[tuple[np.ndarray, int]]:
-    """Points of every move of the oracle's controller, arcs in chords of half a degree at most, quadrant points included."""
+    """Points of every move of the oracle's controller, arcs in chords of half a degree, quadrant points too."""
     for motion in run(program, Machine()):
         if isinstance(motion, Motion):
             points = sample_arc(motion.arc, motion.start, motion.end) if motion.arc else np.array([motion.end])

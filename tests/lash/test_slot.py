@@ -1,4 +1,4 @@
-"""Take-up in air: a take-up goes to the last place where the tool is out of the work, if nothing in between moves its axis."""
+"""Take-up in air: at the last place where the tool is out of the work, if nothing in between moves the axis."""
 
 from __future__ import annotations
 
@@ -60,7 +60,8 @@ def test_made_in_air(program: str, expected: str) -> None:
         # an arc has moved it, though it had no word of it
         (
             "G0 X0\nG1 Z-1 F100\nG3 Y-10 J-5\nG1 X5",
-            "G0 X0\nG1 Z-1 F100\nG3 Y-5.0000 J-5 X-5.0000\nG1 X-4.9000\nG3 X0.1000 Y-10.0000 I5.0000 J0.0000\nG1 X5.1000",
+            "G0 X0\nG1 Z-1 F100\nG3 Y-5.0000 J-5 X-5.0000\n"
+            "G1 X-4.9000\nG3 X0.1000 Y-10.0000 I5.0000 J0.0000\nG1 X5.1000",
         ),
         # no rapid at all
         ("G1 Z-1 F100\nX5", "G1 Z-1 F100\nG1 X0.1000\nX5.1000"),

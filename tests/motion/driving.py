@@ -1,4 +1,4 @@
-"""Run a program on the product's controller and look at what it does in plain millimetres; for the tests in this folder."""
+"""Run a program on the product's controller and look at what it does in plain mm; for the tests in this folder."""
 
 from __future__ import annotations
 

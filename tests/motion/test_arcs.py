@@ -199,7 +199,7 @@ def test_a_full_circle_of_no_radius_moves_nothing() -> None:
 
 
 def test_a_mismatch_of_the_radii_is_kept_and_told() -> None:
-    """NISTIR 6556 3.5.3.2 allows 0.002 mm; real posts write a little more, and the difference is spread along the arc."""
+    """NISTIR 6556 3.5.3.2 allows 0.002 mm; real posts write more, and the difference is spread along the arc."""
     arc = from_centre((10.0, 0.0), (0.0, 10.01), (0.0, 0.0), clockwise=False, closed=False)
     assert arc.mismatch == pytest.approx(0.01)
     assert arc.radius(0.5) == pytest.approx(10.005)

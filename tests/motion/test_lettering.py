@@ -1,7 +1,7 @@
 """The lettering example of NISTIR 6556, appendix C.1: order and places of its reversals.
 
-The blocks are spelled anew from what was derived of the example: its arcs, its strokes and the places where an axis turns.
-Strokes that these leave open (their X, and the slant of the W) are ours, so path lengths are not checked.
+The blocks are spelled anew from what was derived of the example: its arcs, its strokes and the places where an axis
+turns.  Strokes that these leave open (their X, and the slant of the W) are ours, so path lengths are not checked.
 """
 
 from __future__ import annotations
