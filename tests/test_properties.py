@@ -23,7 +23,7 @@ from gcodetool.lash.tally import Tally
 from gcodetool.machine import Axis, Machine
 from gcodetool.program.blocks import blocks, blocks_of
 from gcodetool.program.words import NotWords, join, split
-from tests.lash.rewriting import assert_right
+from tests.lash.rewriting import assert_right, judged, rewrite, sheet
 from tests.oracle.compare import Report
 from tests.oracle.controller import run
 from tests.oracle.equivalents import equivalents
@@ -239,6 +239,40 @@ def test_a_rewritten_program_asks_for_no_more_arcs_and_no_full_circle_of_its_own
     wanted, found = arcs(draw.program), arcs(done[0])
     assert len(found) <= len(wanted) + done[1].splits
     assert sum(map(closed, found)) <= sum(map(closed, wanted))
+
+
+def noisy(rng: random.Random) -> bytes:
+    """A cut in X and Y with noise of a few micrometres on a coarse path, as a scanned or relaxed toolpath has it."""
+    lines = ["G21 G90", "G0 X0 Y0 Z5", "G1 Z-1 F100"]
+    x = y = 0.0
+    for _ in range(60):
+        x += rng.choice([0.0, rng.uniform(-0.006, 0.006), rng.uniform(-8, 8)])
+        y += rng.choice([0.0, rng.uniform(-0.006, 0.006), rng.uniform(-8, 8)])
+        lines.append(f"X{x:.4f} Y{y:.4f}")
+    return "\n".join(lines).encode()
+
+
+@pytest.mark.parametrize("seed", range(8))
+def test_with_a_ripple_the_tool_errs_by_no_more_than_that(seed: int) -> None:
+    """Smaller excursions are passed without a take-up: fewer of them, and an error of the ripple per axis at most."""
+    program = noisy(random.Random(seed))
+    lash, ripple = {"x": "0.1", "y": "0.07"}, {"x": "0.01", "y": "0.01"}
+    result, tally = rewrite(program, sheet(lash, ripple=ripple))
+    exact, every = rewrite(program, sheet(lash))
+    assert sum(tally.take_ups.values()) < sum(every.take_ups.values())
+    assert_right(program, exact, lash, seeds=range(1))
+    report = judged(program, result, lash, seeds=range(2), tolerance=0.0006 + 0.01 * 2**0.5)
+    assert report.feed.value <= 0.0006 + 0.01 * 2**0.5, report
+
+
+@pytest.mark.parametrize("seed", range(8))
+def test_with_a_ripple_the_proof_allows_it_and_no_more(seed: int) -> None:
+    program = noisy(random.Random(seed))
+    lash, ripple = {"x": "0.1", "y": "0.07"}, {"x": "0.01", "y": "0.01"}
+    machine = sheet(lash, ripple=ripple)
+    result, _ = rewrite(program, machine)
+    assert verify(lambda: blocks_of(program), lambda: blocks_of(result), machine).holds
+    assert not verify(lambda: blocks_of(program), lambda: blocks_of(result), sheet(lash)).holds
 
 
 # ---- spellings -------------------------------------------------------------------------------------------------------

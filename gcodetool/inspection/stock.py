@@ -49,9 +49,8 @@ def guess_top(path: Path) -> tuple[float, str]:
     level = lateral & (np.abs(path.start[:, 2] - path.end[:, 2]) < 1e-6)
     heights = np.unique(np.round(path.end[level, 2], 4))
     if len(heights) > 1:
-        return float(
-            2.0 * heights[-1] - heights[-2]
-        ), "one step above the highest level cut, since Z0 lies below the cuts"
+        above = round(float(2.0 * heights[-1] - heights[-2]), 4)
+        return above, "one step above the highest level, since Z0 lies below the cuts"
     if down.any():
         return float(np.min(path.start[down, 2])), "where the plunges begin, since Z0 lies below the cuts"
     return float(np.max(path.start[lateral, 2])), "the highest point of the cuts, since Z0 lies below them"

@@ -72,7 +72,8 @@ def _sides(axis: AxisKnowledge, points: list[int]) -> tuple[list[int], int]:
     turned_at = 0
     for index, point in enumerate(points[1:]):
         new, extreme = advance(side, extreme, point, axis.ripple)
-        if new != side and abs(points[index] - points[turned_at]) <= axis.ripple:
+        stretch = points[turned_at : index + 1]
+        if new != side and max(abs(p - stretch[0]) for p in stretch) <= axis.ripple:
             # a sliver before the quadrant point: the take-up goes to its start, and the arc is not cut
             found[turned_at:] = [new] * (index - turned_at)
         if new != side:

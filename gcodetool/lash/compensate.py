@@ -170,10 +170,14 @@ class Compensator:
         if before is not None:
             self.run.out.close()
             self._doubt.merge(before)
+            if command.g.length or command.kind is Kind.FRAME:
+                self._frames.forget()
 
     def _execute(self, command: Command) -> None:
         run = self.run
         self._before_motion(command)
+        if command.after.units != command.before.units or command.after.feed_mode != command.before.feed_mode:
+            run.change_feed_units(command)
         run.read_feed(command)
         run.state = command.after
         if command.before.motion != command.after.motion and not is_cycle(command.after.motion):
@@ -205,8 +209,9 @@ class Compensator:
             elif code.group == "stop":
                 self.tally.caution(f"do not jog at {word}: it spoils what is known of the sides", command.block.number)
             elif code.group == "end":
+                # where a deletable end may be skipped, what follows it may run
                 self.run.out.close()
-                self._ended = True
+                self._ended = not (command.deletable and self.run.settings.block_delete is None)
             elif code.group == "tool":
                 self._tool_change()
 

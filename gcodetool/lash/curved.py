@@ -66,7 +66,11 @@ def arc(run: Running, command: Command) -> None:
         for letter, target in goal.items():
             axis = run.axes[letter]
             axis.land(target, 0, axis.framed or command.after.distance == "G90")
-        run.put(command, [join_words(run.with_feed(command, command.pieces))])
+        texts = run.reseat(command)
+        pieces = run.with_feed(command, command.pieces)
+        if texts and not command.g.motion:
+            pieces = run.with_motion(command, pieces)
+        run.put(command, [*texts, join_words(pieces)], plane)
         return
     _check_known(run, command, goal)
     begin = {letter: axis.position for letter, axis in run.axes.items()}

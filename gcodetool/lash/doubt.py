@@ -7,7 +7,7 @@ must be stated again before it is used.
 
 from __future__ import annotations
 
-from dataclasses import fields
+from dataclasses import fields, replace
 from typing import NamedTuple
 
 from gcodetool.lash.running import Running
@@ -69,6 +69,10 @@ class Doubt:
         """After a deletable block: keep what it has not changed."""
         after = self._run.state
         changed = {f.name for f in fields(ModalState) if getattr(after, f.name) != getattr(before.state, f.name)}
+        if "offset" in changed:
+            # stated again it may be a change of frame or none
+            changed.discard("offset")
+            self._run.state = replace(after, offset=None)
         self.fields |= changed
         if self._run.feed != before.feed:
             self.fields.add("feed")

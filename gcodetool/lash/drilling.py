@@ -17,7 +17,7 @@ from gcodetool.lash.straight import arrival_side, settling_side
 from gcodetool.motion.command import Command
 from gcodetool.motion.cycles import Cycle, Sticky, read_cycle
 from gcodetool.motion.dialect import PLANE_AXES
-from gcodetool.motion.modal import ModalState
+from gcodetool.motion.modal import ModalState, is_cycle
 from gcodetool.program.numbers import QUANTA_PER_MM
 from gcodetool.program.rewrite import Word, join_words, new_line, with_word
 
@@ -26,16 +26,23 @@ _BRING = "Bring {0} to the hole with a rapid (G0) before the cycle"
 
 @dataclass(slots=True)
 class Drilling:
-    """The sticky words of the program as written, and R as it went out last (in G91 it depends on the shift)."""
+    """The sticky words of the program as written, R as it went out last (in G91 it depends on the shift).
+
+    ``entry`` is where the normal axis stood before the series of cycles, None where that is not known.
+    """
 
     sticky: Sticky
     level_written: int | None = None
+    entry: int | None = None
 
 
 def cycle(run: Running, drilling: Drilling, command: Command) -> None:
     """Rewrite one block in a cycle mode."""
     drilling.sticky.take(command)
     run.out.close()
+    if not is_cycle(command.before.motion):
+        normal = run.axes[PLANE_AXES[command.after.plane][2]]
+        drilling.entry = normal.position if normal.framed else None
     if not command.shape.axes:
         _words_only(run, command)
         return
@@ -51,6 +58,8 @@ def cycle(run: Running, drilling: Drilling, command: Command) -> None:
     pieces = run.with_feed(command, pieces)
     run.note_decimals(command)
     _leave(run, command, asked, sides)
+    if command.after.retract == "G98" and drilling.entry is not None:
+        _doubt_level(run, asked, height, drilling.entry)
     run.put(command, [*before, join_words(pieces)])
 
 
@@ -123,11 +132,16 @@ def _settle(
         reason = f"a cycle that starts from an unknown position or side of {letter}"
         raise command.refusal(word, reason, _BRING.format(letter))
     words, back = [], []
-    for name, target in settle.items():
-        axis, side = run.axes[name], sides[name]
-        axis.land(target, side, True)
-        beyond = holes.overshoot(run, axis, run.is_inch(axis, command.after)) * -side
+    for name, step in asked.steps.items():
+        axis, side = run.axes[name], sides.get(name, 0)
         like = command.number(name).strip()
+        if name not in settle:
+            # it goes along, so that the way there is the one that the cycle would take
+            axis.land(step, side, True)
+            words.append((name, like if axis.idle else run.number_at(axis, command.after, side, like)))
+            continue
+        axis.land(step, side, True)
+        beyond = holes.overshoot(run, axis, run.is_inch(axis, command.after)) * -side
         words.append((name, run.number_at(axis, command.after, side, like, beyond)))
         back.append((name, run.number_at(axis, command.after, side, like)))
         run.tally.path_added += 2 * abs(beyond) / QUANTA_PER_MM
@@ -295,6 +309,13 @@ def _leave_normal(run: Running, command: Command, asked: Cycle, axis: AxisKnowle
     else:
         run.maybe_adrift = True
         axis.adrift = axis.shift != axis.shift_on(1, run.is_inch(axis, command.after))
+
+
+def _doubt_level(run: Running, asked: Cycle, height: int, entry: int) -> None:
+    """G98 after G99 in one series: some controllers come back to where this hole began, others the series."""
+    if max(height, asked.level) != max(entry, asked.level):
+        axis = run.axes[asked.plane[2]]
+        axis.lose_side(command_is_exact=False)
 
 
 # ---- probing

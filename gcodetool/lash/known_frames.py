@@ -25,6 +25,16 @@ class KnownFrames:
         self._length_word: str | None = None
         self._set: dict[str, int] = {}
         self._local: dict[str, int] = {}
+        self._forgotten = False
+
+    def forget(self) -> None:
+        """Nothing is known any more of lengths, offsets and set positions: a deletable block may have changed them."""
+        self._length = self._length_word = None
+        self._offsets.clear()
+        self._set.clear()
+        self._local.clear()
+        self._lengths.clear()
+        self._forgotten = True
 
     # ---- changes that are no word values ---------------------------------------------------------------------------
 
@@ -83,7 +93,7 @@ class KnownFrames:
         elif "G52" in here:
             for letter, _ in command.shape.axes:
                 value = command.quanta(letter)
-                self._move(letter, self._local.get(letter, 0), value)
+                self._move(letter, self._local.get(letter, None if self._forgotten else 0), value)
                 self._local[letter] = value
         else:
             self._g10(command, pieces)

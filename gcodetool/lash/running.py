@@ -72,6 +72,7 @@ class Running:
         self.tally = Tally()
         self.feed: str | None = None
         self.feed_written: str | None = None
+        self.feed_lost = False
         self.motion_written = ""
         self.usual_ending = "\n"
         self.usual_blank = " "
@@ -177,7 +178,8 @@ class Running:
         adrift = {letter: self.axes[letter].side for letter in self.lashed if self.axes[letter].adrift}
         if not adrift:
             return []
-        made = [self._take_up_here(command, adrift, command.before)]
+        # after a cycle the tool is in air; at the start nobody knows, so there it is a feed
+        made = [self._take_up_here(command, adrift, command.before, in_air=self.moved)]
         for letter in adrift:
             self.axes[letter].adrift = False
         return made
@@ -192,7 +194,9 @@ class Running:
         self.out.take((axis.letter, self.number_at(axis, slot.state, side, like)))
         self.count(line, slot.state, [axis], False, None)
 
-    def _take_up_here(self, command: Command, sides: Mapping[str, int], state: ModalState) -> str:
+    def _take_up_here(
+        self, command: Command, sides: Mapping[str, int], state: ModalState, in_air: bool = False
+    ) -> str:
         words: list[Word] = []
         if state.distance == "G90" and not all(self.axes[letter].framed for letter in sides):
             # the block itself turns to G91; only then can the step be said at all
@@ -201,7 +205,7 @@ class Running:
         if state.units is None and command.after.units:
             words.append(("G", command.after.units[1:]))
             state = replace(state, units=command.after.units)
-        by_rapid = command.after.feed_mode != "G94" or command.before.feed_mode != "G94"
+        by_rapid = in_air or command.after.feed_mode != "G94" or command.before.feed_mode != "G94"
         if command.after.motion:
             words.append(("G", "0" if by_rapid else "1"))
             self.motion_written = "G0" if by_rapid else "G1"
@@ -211,7 +215,7 @@ class Running:
         if feed is not None:
             words.append(("F", feed))
             self.feed_written = feed
-        self.count(command.block.number, command.after, axes, True, feed or self.feed)
+        self.count(command.block.number, command.after, axes, not in_air, feed or self.feed)
         return new_line(words, self.look(command))
 
     def _like(self, command: Command, axis: AxisKnowledge) -> str:
@@ -220,9 +224,15 @@ class Running:
     def _take_up_feed(self, command: Command, state: ModalState) -> str | None:
         """The F word a take-up needs: its own feed, or the block's new one; None where the feed in force serves."""
         own = self.machine.take_up_feed
+        if own is None and state.units != command.after.units:
+            # the F of the block is meant in its own units
+            return None
         if own is None:
             new = command.number("F").strip() if command.has("F") else self.feed
             return None if new is None or new == self.feed_written else new
+        if self.feed is None and self.feed_lost and not command.has("F"):
+            reason = "the feed in force was stated in other units or another feed mode, so it cannot be said again"
+            raise command.refusal(command.block.text.strip()[:40], reason, "State F after the change of units")
         value = own / MM_PER_INCH if state.units == "G20" else own
         text = f"{value:.3f}".rstrip("0").rstrip(".")
         return None if text == self.feed_written else text
@@ -253,6 +263,15 @@ class Running:
         """Note the F word of a block before its motion."""
         if "F" in command.shape.at:
             self.feed = command.number("F").strip()
+            self.feed_lost = False
+
+    def change_feed_units(self, command: Command) -> None:
+        """Units or feed mode change: F counts otherwise from here on, so the program's own must be in force before."""
+        if self.feed is not None and self.feed_written not in (None, self.feed):
+            look = self.look(command)
+            self.out.put(new_line([("F", self.feed)], look) + (command.block.ending or self.usual_ending))
+        self.feed_lost = self.feed_lost or self.feed is not None
+        self.feed = self.feed_written = None
 
     def with_feed(self, command: Command, pieces: Sequence[str]) -> list[str]:
         """The pieces of a feed block, with the program's F where a take-up has changed it and the block has none."""

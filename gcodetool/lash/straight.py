@@ -147,10 +147,12 @@ def _settled(
 
 def split_last_words(command: Command, pieces: list[str]) -> tuple[list[str], list[Word]]:
     """Take out the M words that act after the motion (stops, program end), so that they can end the last line."""
-    indexes = [i for i in command.shape.m if code_word("M", command.pieces[i]) in ACTS_LAST]
-    if not indexes:
+    if not command.shape.m:
         return pieces, []
-    return without_words(pieces, indexes), [("M", command.pieces[i].strip()) for i in indexes]
+    # looked for in the edited pieces: a word may have been put in or taken out before them
+    numbers = [i + 1 for i in range(1, len(pieces), 3) if pieces[i] in ("M", "m")]
+    indexes = [i for i in numbers if code_word("M", pieces[i]) in ACTS_LAST]
+    return without_words(pieces, indexes), [("M", pieces[i].strip()) for i in indexes]
 
 
 def feed(run: Running, command: Command) -> None:

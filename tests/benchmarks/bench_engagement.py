@@ -84,6 +84,18 @@ def arcs(count: int) -> Iterator[str]:
         place += 1
 
 
+def long_lines(count: int) -> Iterator[str]:
+    """Facing in single lines of 100 mm, 1.5 mm apart, level after level."""
+    made, z = 0, -0.2
+    while made < count:
+        yield f"G1 Z{z:.2f}"
+        for line in range(1, 61):
+            yield f"G1 X{100 if line % 2 else 0}\nG1 Y{1.5 * line:.2f}"
+            made += 2
+        yield "G0 Z5\nG0 X0 Y0"
+        z -= 0.2
+
+
 HABITS: dict[str, tuple[Callable[[int], Iterator[str]], str]] = {
     "adaptive": (adaptive, "flat"),
     "zigzag": (zigzag, "flat"),
@@ -91,6 +103,7 @@ HABITS: dict[str, tuple[Callable[[int], Iterator[str]], str]] = {
     "relief": (relief, "flat"),
     "relief, ball": (relief, "ball"),
     "arcs": (arcs, "flat"),
+    "long lines": (long_lines, "flat"),
 }
 
 
