@@ -12,6 +12,7 @@ from gcodetool.inspection.audit_records import AxisEnvelope, StockTaken
 from gcodetool.inspection.cutting_records import Engagement, Flags, Floats, Ints, Kind, Labels, Path
 from gcodetool.inspection.job_records import Cutter, Job, KeepOut
 from gcodetool.inspection.lash_path import turning_points
+from gcodetool.inspection.toolpath import places
 from gcodetool.machine import Machine
 
 NAMES = "XYZ"
@@ -78,7 +79,9 @@ def below_stock(path: Path, stock: StockTaken) -> list[Hit]:
     """The deepest feed motion below the bottom of the stock."""
     if stock.bottom is None:
         return []
+    move, place = turning_points(path, 2)
     lowest = np.minimum(path.start[:, 2], path.end[:, 2])
+    np.minimum.at(lowest, move, place)
     deep = np.flatnonzero(~path.rapid & ~path.turning & (lowest < stock.bottom - 1e-6))
     if not len(deep):
         return []
@@ -91,7 +94,7 @@ def keep_out_hits(path: Path, cutters: Sequence[Cutter], keep_outs: Sequence[Kee
     if not keep_outs or not path.count:
         return []
     radius = np.array([cutter.radius for cutter in cutters] or [0.0])[path.tool]
-    lowest = np.minimum(path.start[:, 2], path.end[:, 2])
+    lowest = lowest_points(path)
     known = ~path.turning & ~(path.rapid & path.unplaced)
     found = []
     for area in keep_outs:
@@ -116,21 +119,25 @@ def _boxes_meet(path: Path, moves: Ints, radius: Floats, bounds: tuple[float, fl
     return meets
 
 
-def _below(path: Path, move: int, top: float) -> shapely.LineString:
+def _below(path: Path, move: int, top: float) -> shapely.Geometry:
     """The part of a move that lies below a height, in plan."""
     share = np.linspace(0.0, 1.0, CHORDS + 1 if path.plane[move] else 2)
-    points = path.start[move] + share[:, None] * (path.end[move] - path.start[move])
-    if path.plane[move] == 1:
-        angle = path.angle[move] + share * path.sweep[move]
-        points[:, 0] = path.centre[move, 0] + path.radius[move] * np.cos(angle)
-        points[:, 1] = path.centre[move, 1] + path.radius[move] * np.sin(angle)
-    z0, z1 = float(path.start[move, 2]), float(path.end[move, 2])
-    if not path.plane[move] and (z0 < top) != (z1 < top):
-        cross = points[0] + (top - z0) / (z1 - z0) * (points[1] - points[0])
-        points = np.array([points[0], cross] if z0 < top else [cross, points[1]])
+    points = places(path, np.full(len(share), move), share)
+    low = points[:, 2] < top
+    if not path.plane[move] and low[0] != low[1]:
+        z0, z1 = points[:, 2]
+        points[0 if low[1] else 1] = points[0] + (top - z0) / (z1 - z0) * (points[1] - points[0])
     elif path.plane[move]:
-        points = points[points[:, 2] < top] if (points[:, 2] < top).sum() > 1 else points
-    return shapely.LineString(points[:, :2])
+        points = points[low]
+    return shapely.LineString(points[:, :2]) if len(points) > 1 else shapely.MultiPoint(points[:, :2])
+
+
+def lowest_points(path: Path) -> Floats:
+    """The lowest Z of each move; for arcs with Z in their plane that of the whole circle."""
+    found = np.minimum(path.start[:, 2], path.end[:, 2])
+    for plane, column in ((2, 0), (3, 1)):
+        found = np.where(path.plane == plane, np.minimum(found, path.centre[:, column] - path.radius), found)
+    return found
 
 
 def rapids_in_material(path: Path, labels: Labels, engagement: Engagement, area: Floats) -> list[Hit]:

@@ -167,6 +167,14 @@ def test_a_slanted_rapid_into_a_clamp_counts_below_its_height_only() -> None:
     assert 304 not in codes(judge(HEAD + high, keep_outs=(CLAMP,)))
 
 
+def test_an_arc_in_another_plane_dips_into_a_clamp_and_below_the_stock() -> None:
+    """From X-60 to X-20 at Z12, G18 G3 with radius 20: down to Z-8 over the clamp; G2 goes over it."""
+    start = "G0 X-20 Y25 Z12\nG18\n"
+    dips, passes = (judge(HEAD + start + f"{word} X-60 Z12 I-20 K0\n", keep_outs=(CLAMP,)) for word in ("G3", "G2"))
+    assert 304 in codes(dips) and 308 in codes(dips)
+    assert not codes(passes) & {304, 308}
+
+
 def test_round_clamps() -> None:
     screw = KeepOut("screw", disc(0.0, 10.0, 4.0), 3.0)
     assert 304 in codes(judge(HEAD + "G0 X-40 Y4 Z5\nG1 Z-1\nG1 X40\n", keep_outs=(screw,)))
