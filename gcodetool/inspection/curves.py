@@ -156,7 +156,7 @@ def _walk(first: Sequence[Piece], second: Sequence[Piece]) -> Gap | None:
     left.
     """
     worst = _apart(first[0].start, second[0].start, first[0], second[0])
-    i = j = 0
+    i = j = began = 0
     swept = 0.0
     level = worst.distance <= SURE
     while i < len(first) and j < len(second):
@@ -167,6 +167,7 @@ def _walk(first: Sequence[Piece], second: Sequence[Piece]) -> Gap | None:
             if ends.distance <= SURE:
                 worst = worst.wider(ends)
                 i, j = i + 1, j + 1
+                began = j
                 continue
         for share in (0.25, 0.5, 0.75, 1.0) if part.arc else (0.5, 1.0):
             worst = worst.wider(nearest(first[max(0, i - 1) : i + 2], part.point(share), part.line))
@@ -176,14 +177,15 @@ def _walk(first: Sequence[Piece], second: Sequence[Piece]) -> Gap | None:
         unswept = piece.arc is not None and swept < abs(piece.arc.sweep) - LOST_SWEEP
         on_i, on_j = _steps(first, second, i, j, unswept)
         if on_i:
-            worst = worst.wider(_end_gap(piece, second[max(0, j - 1) : j + 2]))
-            swept = 0.0
+            worst = worst.wider(_inner_gap(piece, second[max(0, began - 1) : j + 2]))
+            swept, began = 0.0, j + on_j
         level = bool(on_i and on_j) and math.dist(piece.end, part.end) <= SURE
         i, j = i + on_i, j + on_j
     for part in second[j:]:
-        worst = worst.wider(nearest(first[-1:], part.end, part.line))
+        for share in (0.25, 0.5, 0.75, 1.0):
+            worst = worst.wider(nearest(first[-1:], part.point(share), part.line))
     for piece in first[i:]:
-        worst = worst.wider(_end_gap(piece, second[-1:]))
+        worst = worst.wider(_inner_gap(piece, second[max(0, began - 1) :]))
     return worst if worst.distance <= ALIKE else None
 
 
@@ -199,9 +201,13 @@ def _steps(first: Sequence[Piece], second: Sequence[Piece], i: int, j: int, unsw
     return (0, 1) if wait < lead else (1, 0)
 
 
-def _end_gap(piece: Piece, parts: Sequence[Piece]) -> Gap:
-    found = nearest(parts, piece.end, piece.line)
-    return Gap(found.distance, found.by_axis, (piece.line, found.lines[0]))
+def _inner_gap(piece: Piece, parts: Sequence[Piece]) -> Gap:
+    """How far places of a piece lie from the parts that should be there: a circle left out begins where it ends."""
+    worst = Gap()
+    for share in (0.25, 0.5, 0.75, 1.0) if piece.arc else (1.0,):
+        found = nearest(parts, piece.point(share), piece.line)
+        worst = worst.wider(Gap(found.distance, found.by_axis, (piece.line, found.lines[0])))
+    return worst
 
 
 def _apart(a: Vector, b: Vector, piece: Piece, part: Piece) -> Gap:
@@ -274,14 +280,10 @@ def by_window(
     skipped = np.array([_settles(piece, first) for piece in second])[two_owner]
     skipped |= np.append(skipped[1:], False)
     for points, path, swap in ((two, one, False), (one, two, True)):
-        away, vector, at = _nearest(points, path)
+        away, vector, at = _nearest(points, path, *_allowed(first, one_owner, swap, ease))
         if not swap:
             away = np.where(skipped, 0.0, away)
             vector = np.where(skipped[:, None], 0.0, vector)
-        if ease is not None:
-            owners = one_owner if swap else one_owner[np.minimum(at + 1, len(one_owner) - 1)]
-            vector = _eased(vector, [first[k].line for k in owners], ease)
-            away = np.sqrt((vector**2).sum(axis=1))
         worst = int(away.argmax())
         here, there = (one_owner, two_owner) if swap else (two_owner, one_owner)
         mine, other = int(here[worst]), int(there[min(int(at[worst]) + 1, len(there) - 1)])
@@ -290,11 +292,14 @@ def by_window(
     return found
 
 
-def _eased(vector: Floats, lines: Sequence[int], ease: Ease) -> Floats:
-    """Vectors with what is allowed on their lines taken off, axis by axis."""
-    allowed = np.array([ease.on(line) for line in lines])
-    eased: Floats = np.sign(vector) * np.maximum(np.abs(vector) - allowed, 0.0)
-    return eased
+def _allowed(
+    first: Sequence[Piece], one_owner: NDArray[np.int64], swap: bool, ease: Ease | None
+) -> tuple[Floats | None, Floats | None]:
+    """What is allowed at each point, and on each segment of the path it is held against; it hangs on the first path."""
+    if ease is None:
+        return None, None
+    rows = np.array([ease.on(first[k].line) for k in one_owner])
+    return (rows, None) if swap else (None, rows[1:])
 
 
 def _settles(piece: Piece, intended: Sequence[Piece]) -> bool:
@@ -305,8 +310,13 @@ def _settles(piece: Piece, intended: Sequence[Piece]) -> bool:
     return moved == [2] and piece.end[2] >= min(p.end[2] for p in intended) - STILL
 
 
-def _nearest(points: Floats, path: Floats) -> tuple[Floats, Floats, NDArray[np.int64]]:
-    """For each point its distance from the polyline, the vector to it and the segment, inside a moving window."""
+def _nearest(
+    points: Floats, path: Floats, at_points: Floats | None = None, on_segments: Floats | None = None
+) -> tuple[Floats, Floats, NDArray[np.int64]]:
+    """For each point its distance from the polyline, the vector to it and the segment, inside a moving window.
+
+    What is allowed at points or on segments, by axis, is taken off the vectors before the nearest is chosen.
+    """
     away = np.zeros(len(points))
     vector = np.zeros_like(points)
     at = np.zeros(len(points), dtype=np.int64)
@@ -322,7 +332,12 @@ def _nearest(points: Floats, path: Floats) -> tuple[Floats, Floats, NDArray[np.i
             along, travelled[[low, low + len(chunk) - 1]] * along[-1] / (travelled[-1] or 1.0)
         )
         lowest, highest = max(0, int(first) - WINDOW), min(len(path) - 1, int(last) + WINDOW)
-        d, v, index = _to_segments(chunk, path[lowest : highest + 1])
+        allowed = None
+        if at_points is not None:
+            allowed = at_points[low : low + STEP, None, :]
+        elif on_segments is not None:
+            allowed = on_segments[None, lowest:highest, :]
+        d, v, index = _to_segments(chunk, path[lowest : highest + 1], allowed)
         away[low : low + STEP], vector[low : low + STEP], at[low : low + STEP] = d, v, index + lowest
     return away, vector, at
 
@@ -333,13 +348,15 @@ def _lengths(points: Floats) -> Floats:
     return np.concatenate(([0.0], np.cumsum(steps)))
 
 
-def _to_segments(points: Floats, path: Floats) -> tuple[Floats, Floats, NDArray[np.int64]]:
+def _to_segments(points: Floats, path: Floats, allowed: Floats | None) -> tuple[Floats, Floats, NDArray[np.int64]]:
     start, way = path[:-1], np.diff(path, axis=0)
     length = (way * way).sum(axis=1)
     length[length == 0.0] = 1.0
     offset = points[:, None, :] - start[None, :, :]
     share = np.clip(np.einsum("ijk,jk->ij", offset, way) / length, 0.0, 1.0)
     rest = offset - share[:, :, None] * way[None, :, :]
+    if allowed is not None:
+        rest = np.sign(rest) * np.maximum(np.abs(rest) - allowed, 0.0)
     square = np.einsum("ijk,ijk->ij", rest, rest)
     index = square.argmin(axis=1)
     rows = np.arange(len(points))

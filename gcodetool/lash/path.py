@@ -134,7 +134,13 @@ class Follower:
         """The pieces of the actual path; a move that only crosses lash gives one piece of no length."""
         before = None
         if self.loose:
-            moving = {k for k in self.loose if move.start[k] != move.end[k] or (move.arc and k in move.axes)}
+            # a rapid that names an axis is meant to leave it in its place, even where it has no way to go
+            named = move.named if move.rapid else ""
+            moving = {
+                k
+                for k in self.loose
+                if move.start[k] != move.end[k] or (move.arc and k in move.axes) or ORDER[k] in named
+            }
             before = self.seen(move.start) if moving else None
             self.loose -= moving
         self._command = list(_mm(move.end))

@@ -37,6 +37,7 @@ class Controller:
         self.unplaced = set(setup.unplaced)
         self.context = Context()
         self._line = 0
+        self._named = ""
         self._probes = 0
         self._started = False
 
@@ -68,6 +69,7 @@ class Controller:
             if not self.setup.offsets:
                 self.unplaced.update(ORDER)
         self.state = command.after
+        self._named = "".join([letter for letter, _ in command.shape.axes])
         if not is_cycle(command.after.motion):
             self.sticky.drop()
         mover = _MOVERS.get(command.kind)
@@ -121,7 +123,7 @@ class Controller:
         start = self._position()
         unplaced = "".join(a for a in goal if a in self.unplaced) if self.unplaced else ""
         self.at.update(goal)
-        return Move(rapid, self._line, start, self._position(), arc, axes, self.context, unplaced)
+        return Move(rapid, self._line, start, self._position(), arc, axes, self.context, unplaced, "", self._named)
 
     def _straight(self, command: Command) -> Iterator[Happening]:
         goal = self._targets(command)

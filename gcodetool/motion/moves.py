@@ -36,6 +36,7 @@ class Move(NamedTuple):
     ``axes`` are the indexes of the first and second plane axis of the arc.  ``unplaced`` are the letters whose start
     is not known from the program, so that their direction is not either.  ``hole`` is what a move is to the hole of a
     cycle: "in", "out", "peck", "back", or "" where it is none of them (see ``cycles``).
+    ``named`` are the letters of the axes that the block has words of.
     """
 
     rapid: bool
@@ -47,6 +48,7 @@ class Move(NamedTuple):
     context: Context
     unplaced: str = ""
     hole: str = ""
+    named: str = ""
 
 
 class Event(NamedTuple):
