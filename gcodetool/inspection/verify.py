@@ -103,24 +103,38 @@ def verify(
 def _ripple_places(blocks: Iterable[Block], machine: Machine, setup: Setup) -> Ease | None:
     """Where the ripple of the sheet has passed over a reversal: lines of the original and axes; None without a ripple.
 
-    There the side that is held differs from the one that the motion has.  The move after it is one of these places too,
-    because it begins where they end.
+    There an axis stands short of its extreme, or has come back to it inside the move.  The move after that is one of
+    these places too, because it begins where they end.
     """
     stated = {a: axis.ripple for a, axis in machine.axes.items() if axis.lash and axis.ripple}
     if not stated:
         return None
-    finest = dict.fromkeys(stated, MM_DIGIT[machine.decimals])
-    plain, passing = Detector(finest), Detector({a: decimal_to_quanta(value) for a, value in stated.items()})
+    amount = {ORDER.index(a): decimal_to_quanta(value) for a, value in stated.items()}
+    plain = Detector(dict.fromkeys(stated, MM_DIGIT[machine.decimals]))
+    passing = Detector({ORDER[k]: value for k, value in amount.items()})
     lines: dict[int, frozenset[int]] = {}
     before: frozenset[int] = frozenset()
+    anchor: dict[int, int] = {}
     for item in Controller(setup).run(blocks):
-        plain.take(item)
-        passing.take(item)
-        here = frozenset(k for k, (a, b) in enumerate(zip(plain.sides, passing.sides, strict=True)) if a != b)
-        if here or before:
-            lines[item.line] = lines.get(item.line, frozenset()) | here | before
+        every, counted = plain.take(item), passing.take(item)
+        here: frozenset[int] = frozenset()
+        if isinstance(item, Move):
+            passed = frozenset(ORDER.index(r.axis) for r in every if r not in counted)
+            here = passing.behind(item) | passed | _near_rapid(item, anchor, amount)
+            if here or before:
+                lines[item.line] = lines.get(item.line, frozenset()) | here | before
         before = here
     return Ease(tuple(float(stated.get(letter, 0)) for letter in ORDER), lines)
+
+
+def _near_rapid(move: Move, anchor: dict[int, int], amount: Mapping[int, int]) -> frozenset[int]:
+    """Axes still within their ripple of where the last rapid left them, on a side that only the rewriter knows."""
+    if move.rapid:
+        anchor.update({k: move.end[k] for k in amount})
+        return frozenset()
+    for k in [k for k in anchor if abs(move.end[k] - anchor[k]) > amount[k]]:
+        del anchor[k]
+    return frozenset(k for k in anchor if move.end[k] != anchor[k])
 
 
 def _switches(original: Blocks, stated: Settings) -> tuple[bool, ...]:

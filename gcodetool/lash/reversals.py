@@ -71,10 +71,9 @@ class Detector:
         self._side = [0] * 6
         self._extreme: list[int] = [0] * 6
 
-    @property
-    def sides(self) -> tuple[int, ...]:
-        """The side of each axis, X Y Z A B C, 0 where it is not known."""
-        return tuple(self._side)
+    def behind(self, move: Move) -> frozenset[int]:
+        """The axes that stand short of their extreme after a move: in an excursion that the ripple passes over."""
+        return frozenset(k for k in range(6) if self._side[k] and self._extreme[k] != move.end[k])
 
     def take(self, item: Happening) -> list[Reversal]:
         """The reversals of one move; after an event the sides it loses are forgotten."""

@@ -218,6 +218,17 @@ def test_probes_in_either_direction_are_proved(word: str, datum: str) -> None:
     assert verdict(program, compensate(program, LASH, datum=datums), datum=datums).holds
 
 
+@pytest.mark.parametrize("word", ["G73", "G83"])
+@pytest.mark.parametrize("depth", ["6.5", "6.505", "6.6", "8"])
+@pytest.mark.parametrize("lash", ["0.1", "0.3"])
+def test_peck_cycles_are_proved_however_short_the_last_peck(word: str, depth: str, lash: str) -> None:
+    """With more lash than a chip break backs off the tool stands still between the pecks."""
+    program = f"G21 G90\nG0 X0 Y0 Z8\nG99 {word} X5 Z-{depth} R1 Q1.5 F254\nX-9\nG80\n"
+    result = compensate(program, {"x": "0.1", "z": lash})
+    assert judged(program, result, {"x": "0.1", "z": lash}).ok()
+    assert verdict(program, result, {"x": "0.1", "z": lash}).holds
+
+
 # ---- the machines it tries -------------------------------------------------------------------------------------------
 
 
