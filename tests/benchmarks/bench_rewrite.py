@@ -1,7 +1,7 @@
 """How fast the rewriter is, as ratios to floors measured in the same run: ``python -m tests.benchmarks.bench_rewrite``.
 
 Floors on the same lines: a plain copy loop, and ``findall`` of a word pattern with a float for each number.  Inputs are
-made here: short moves of a relief in three axes, and pockets with arcs, line numbers and comments.  Nothing is asserted.
+made here: short moves of a relief in three axes, and pockets with arcs, line numbers, comments.  Nothing is asserted.
 """
 
 from __future__ import annotations

@@ -21,7 +21,10 @@ def rewritten(program: str) -> str:
 
 
 def test_g98_after_g99_leaves_the_level_in_doubt_so_the_next_rapid_settles() -> None:
-    """NISTIR 6556 takes the level before the hole, many controllers that before the series (common practice, no source)."""
+    """NISTIR 6556 takes the level before the hole, many controllers that before the series.
+
+    The latter is common practice, no source.
+    """
     body = "G99 G81 X0 Y0 Z-1 R2 F100\nG98 X10\nG80\n"
     assert rewritten(f"{HEAD}{body}G0 Z5\n") == f"{SETTLED}{body}G0 Z5.6000\nG0 Z5.0000\n"
 
