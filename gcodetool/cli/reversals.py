@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from typing import Annotated
 
 import typer
@@ -20,6 +20,7 @@ from gcodetool.cli.options import (
 from gcodetool.cli.streams import Source, open_source, standard_output
 from gcodetool.cli.tables import show, show_table
 from gcodetool.cli.terminal import watched
+from gcodetool.lash.cost import stop_to_stop
 from gcodetool.lash.reversals import Reversal, reversals, statistics
 from gcodetool.machine import Machine
 from gcodetool.motion.moves import ORDER, Setup
@@ -65,8 +66,18 @@ def _list(found: Iterator[Reversal], as_json: bool) -> None:
     out.flush()
 
 
+def _cost(machine: Machine) -> Callable[[str, float], float]:
+    """Seconds of one take-up of an axis at a feed in mm/min."""
+
+    def seconds(letter: str, feed: float) -> float:
+        axis = machine.axis(letter)
+        return stop_to_stop(float(axis.lash), feed / 60.0, float(axis.acceleration or 0))
+
+    return seconds
+
+
 def _statistics(source: Source, setup: Setup, ripple: dict[str, int], machine: Machine, as_json: bool) -> None:
-    axes = statistics(_blocks(source), setup, ripple)
+    axes = statistics(_blocks(source), setup, ripple, cost=_cost(machine))
     if as_json:
         show(*json.dumps({"schema": SCHEMA, "units": "mm", "axes": tables.as_json(axes)}, indent=2).splitlines())
         return
@@ -79,3 +90,5 @@ def _statistics(source: Source, setup: Setup, ripple: dict[str, int], machine: M
     if lashed:
         needed = ", ".join(f"{axis.axis} {axis.take_ups}" for axis in axes if axis.axis in lashed)
         show(f"take-ups needed on the axes with lash: {needed or 'none'}")
+        seconds = sum(axis.seconds for axis in axes)
+        show(f"time they would add: about {seconds:.1f} s, each from stop to stop at the feeds and accelerations known")

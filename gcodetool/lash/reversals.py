@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import itertools
 from collections import Counter
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Callable, Iterable, Iterator, Mapping
 from dataclasses import dataclass, field
 from statistics import median
 from typing import NamedTuple
@@ -40,8 +40,9 @@ class AxisReversals:
 
     ``feed`` counts all reversals on feed motion, ``in_arcs`` those of them inside an arc, ``rapid`` those on rapids.
     ``median_travel`` and ``shortest_travel`` are between neighbouring reversals, None with fewer than two.
-    ``suppressed`` is what the ripple has passed over.  ``bins`` counts reversals along the axis from ``low`` to
-    ``high``, in equal parts.
+    ``suppressed`` is what the ripple has passed over, ``seconds`` what the take-ups would cost from stop to stop, 0
+    where lash or feed is not known.  ``bins`` counts reversals along the axis from ``low`` to ``high``, in equal
+    parts.
     """
 
     axis: str
@@ -55,6 +56,7 @@ class AxisReversals:
     high: float
     bins: tuple[int, ...]
     busiest: tuple[tuple[int, int], ...]
+    seconds: float = 0.0
 
     @property
     def take_ups(self) -> int:
@@ -123,6 +125,7 @@ class _Counts:
     unfiltered: int = 0
     places: list[float] = field(default_factory=list)
     lines: Counter[int] = field(default_factory=Counter)
+    seconds: float = 0.0
 
 
 def reversals(blocks: Iterable[Block], setup: Setup, ripple: Mapping[str, int]) -> Iterator[Reversal]:
@@ -132,8 +135,17 @@ def reversals(blocks: Iterable[Block], setup: Setup, ripple: Mapping[str, int]) 
         yield from detector.take(item)
 
 
-def statistics(blocks: Iterable[Block], setup: Setup, ripple: Mapping[str, int], most: int = 5) -> list[AxisReversals]:
-    """Statistics of the axes that move; ``most`` is how many of the busiest blocks to name."""
+def statistics(
+    blocks: Iterable[Block],
+    setup: Setup,
+    ripple: Mapping[str, int],
+    most: int = 5,
+    cost: Callable[[str, float], float] | None = None,
+) -> list[AxisReversals]:
+    """Statistics of the axes that move; ``most`` is how many of the busiest blocks to name.
+
+    ``cost`` gives the seconds of one take-up of an axis at a feed in mm/min.
+    """
     filtered, plain = Detector(ripple), Detector({})
     counts = {letter: _Counts() for letter in ORDER}
     moved: set[str] = set()
@@ -146,6 +158,8 @@ def statistics(blocks: Iterable[Block], setup: Setup, ripple: Mapping[str, int],
             )
         for reversal in filtered.take(item):
             _count(counts[reversal.axis], reversal)
+            if cost is not None and not reversal.rapid and isinstance(item, Move) and item.context.feed_mode == "G94":
+                counts[reversal.axis].seconds += cost(reversal.axis, item.context.feed or 0.0)
         for reversal in plain.take(item):
             counts[reversal.axis].unfiltered += 1
     return [_summed(letter, counts[letter], most) for letter in ORDER if letter in moved]
@@ -176,6 +190,7 @@ def _summed(letter: str, counts: _Counts, most: int) -> AxisReversals:
         high=high,
         bins=_bins(counts.places, low, high),
         busiest=tuple(busiest),
+        seconds=counts.seconds,
     )
 
 

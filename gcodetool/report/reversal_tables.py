@@ -64,6 +64,7 @@ def as_json(axes: Sequence[AxisReversals]) -> list[dict[str, Any]]:
             "rapid": axis.rapid,
             "take_ups": axis.take_ups,
             "suppressed": axis.suppressed,
+            "seconds": axis.seconds,
             "median_travel": axis.median_travel,
             "shortest_travel": axis.shortest_travel,
             "low": axis.low,
