@@ -27,6 +27,7 @@ from gcodetool.cli.options import (
 from gcodetool.cli.sheet_words import sheet_lines
 from gcodetool.cli.stated import (
     BlockDeleteOption,
+    ClearZOption,
     HoleOvershootOption,
     LengthOption,
     LookAheadOption,
@@ -65,6 +66,7 @@ def command(
     length: LengthOption = None,
     block_delete: BlockDeleteOption = None,
     look_ahead: LookAheadOption = 32,
+    clear_z: ClearZOption = None,
     hole_overshoot: HoleOvershootOption = None,
     stops: Annotated[
         bool, typer.Option("--stops", help="List every take-up that stops the tool inside the cut.")
@@ -96,7 +98,7 @@ def command(
         machine, lash=lash, datum=datum, ripple=ripple, units=units, take_up_feed=take_up_feed,
         settle_margin=settle_margin, decimals=decimals, lash_needed=True,
     )  # fmt: skip
-    settings = settings_from(start, offset, length, block_delete, look_ahead, hole_overshoot)
+    settings = settings_from(start, offset, length, block_delete, look_ahead, hole_overshoot, clear_z)
     _check_overshoot(settings, sheet)
     tell = _hush if quiet else _say_lines
     sheet_words = sheet_lines(sheet, machine is not None)

@@ -44,6 +44,10 @@ LookAheadOption = Annotated[
         "--look-ahead", metavar="N", min=0, max=10_000, help="Blocks held back at most to make a take-up in air."
     ),
 ]
+ClearZOption = Annotated[
+    str | None,
+    typer.Option("--clear-z", metavar="MM", help="Program Z above which there is no work: take-ups may go there."),
+]
 HoleOvershootOption = Annotated[
     str | None,
     typer.Option(
@@ -65,6 +69,7 @@ def settings_from(
     block_delete: str | None,
     look_ahead: int,
     hole_overshoot: str | None = None,
+    clear_z: str | None = None,
 ) -> Settings:
     """What the operator states, read; raises SheetError with the way to write it."""
     if block_delete not in (None, "on", "off"):
@@ -80,6 +85,7 @@ def settings_from(
         look_ahead=look_ahead,
         block_delete=None if block_delete is None else block_delete == "on",
         hole_overshoot=_overshoot(hole_overshoot),
+        clear_z=None if clear_z is None else _height(clear_z),
     )
 
 
@@ -93,6 +99,13 @@ def _overshoot(text: str | None) -> int:
     if not 0 < value <= 20:
         raise SheetError(f"--hole-overshoot {text}: write a length in mm, above 0 and at most 20")
     return decimal_to_quanta(value)
+
+
+def _height(text: str) -> int:
+    try:
+        return decimal_to_quanta(Decimal(text))
+    except InvalidOperation:
+        raise SheetError(f"--clear-z {text}: write a height in mm, as 2.5") from None
 
 
 def _letter(text: str, option: str) -> str:

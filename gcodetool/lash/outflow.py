@@ -81,7 +81,8 @@ class Outflow:
             self.write(text + slot.ending)
         self._lines.clear()
         if self._words:
-            self.write(new_line([("G", "0"), *self._words], slot.look) + slot.ending)
+            # the motion word in force, so that the blocks behind are read as before
+            self.write(new_line([("G", slot.state.motion[1:]), *self._words], slot.look) + slot.ending)
             self._words.clear()
         for text in self._held:
             self.write(text)

@@ -85,7 +85,7 @@ class Quick:
     def _begin(self) -> bool:
         """Take over what is known; True where the modes and all that is known allow the short way."""
         run, state = self._run, self._run.state
-        if run.settings.hole_overshoot:
+        if run.settings.hole_overshoot or run.settings.clear_z is not None:
             return False
         modes = state.distance == "G90" and state.units is not None and state.feed_mode == "G94"
         if not modes or run.maybe_adrift or state.motion not in ("G0", "G1", "G2", "G3") or not self._is_open():

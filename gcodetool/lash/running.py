@@ -42,10 +42,10 @@ MM_PER_INCH = Decimal("25.4")
 class Settings:
     """How to rewrite, beside the machine: what holds at the start, how far to look ahead, how to take deletable blocks.
 
-    ``offsets`` and ``lengths`` are what the operator states of work offsets and tool lengths, quanta.
-    ``hole_overshoot`` is how far past a hole to go so as to reach it from the datum side, quanta, 0 for not at all.
-    ``block_delete`` is None where the switch is not known, True where deletable blocks are skipped, False where they
-    run.
+    ``offsets`` and ``lengths`` are what the operator states of work offsets and tool lengths, ``clear_z`` the height
+    above which there is no work (None: not stated), ``hole_overshoot`` how far to go past a hole so as to reach it
+    from the datum side (0: not at all); all in quanta.  ``block_delete`` is None where the switch is not known, True
+    where deletable blocks are skipped, False where they run.
     """
 
     start: Mapping[str, Start] = field(default_factory=dict)
@@ -54,6 +54,7 @@ class Settings:
     look_ahead: int = 32
     block_delete: bool | None = None
     hole_overshoot: int = 0
+    clear_z: int | None = None
 
 
 class Running:
@@ -288,6 +289,14 @@ class Running:
         return with_leading_word(pieces, ("G", command.after.motion[1:]), self.look(command))
 
     # ---- the slot -------------------------------------------------------------------------------------------------
+
+    def open_clear_slot(self, command: Command) -> None:
+        """After a feed that ends above the work, as the operator has stated its height, take-ups cost nothing either."""
+        z, clear = self.axes["Z"], self.settings.clear_z
+        if clear is None or not z.framed or z.position < clear or command.deletable:
+            return
+        if command.after.motion == "G1" and command.after.feed_mode == "G94":
+            self.open_slot(command.after, command.pieces, command.block.ending)
 
     def open_slot(self, state: ModalState, pieces: list[str], ending: str) -> None:
         """After a rapid: the tool is in air here, so this is where take-ups cost nothing."""

@@ -210,6 +210,7 @@ def finish_feed(run: Running, command: Command, texts: list[str], pieces: list[s
     if texts and not command.g.motion and run.motion_written != command.after.motion and command.after.motion:
         pieces = run.with_motion(command, pieces)
     run.put(command, [*texts, join_words(pieces)])
+    run.open_clear_slot(command)
 
 
 def _feed_known(run: Running, command: Command, letter: str) -> bool:
