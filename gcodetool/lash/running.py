@@ -291,7 +291,7 @@ class Running:
     # ---- the slot -------------------------------------------------------------------------------------------------
 
     def open_clear_slot(self, command: Command) -> None:
-        """After a feed that ends above the work, as the operator has stated its height, take-ups cost nothing either."""
+        """After a feed that ends above the height stated for the work, take-ups cost nothing either."""
         z, clear = self.axes["Z"], self.settings.clear_z
         if clear is None or not z.framed or z.position < clear or command.deletable:
             return
