@@ -77,7 +77,7 @@ def _bottom(piece: Piece) -> Piece:
     """
     way = [b - a for a, b in zip(piece.start, piece.end, strict=True)]
     length = max(map(abs, way))
-    if length <= _HOLE_END:
+    if length == 0.0:
         return piece
     step = tuple([w / length * _HOLE_END for w in way])
     return piece._replace(start=tuple([b - s for b, s in zip(piece.end, step, strict=True)]))

@@ -58,7 +58,7 @@ class GWords:
     fault: tuple[str, str, str] | None = None
 
 
-_sorted: dict[str, GWords] = {}
+_sorted: dict[tuple[str, ...], GWords] = {}
 # keyed by identity, which is safe because each entry keeps both objects alive, and much cheaper than hashing them
 _states: dict[ModalState, ModalState] = {}
 _steps: dict[tuple[int, int], tuple[ModalState, GWords, ModalState]] = {}
@@ -75,12 +75,11 @@ def code_word(letter: str, number: str) -> str:
 
 def g_words(numbers: tuple[str, ...]) -> GWords:
     """Sort the G numbers of a block; cached by their text."""
-    key = " ".join(numbers)
-    found = _sorted.get(key)
+    found = _sorted.get(numbers)
     if found is None:
         if len(_sorted) > 4096:
             _sorted.clear()
-        found = _sorted[key] = _sort([code_word("G", number) for number in numbers])
+        found = _sorted[numbers] = _sort([code_word("G", number) for number in numbers])
     return found
 
 

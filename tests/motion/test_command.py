@@ -149,3 +149,10 @@ def _without_units(program: str) -> Refusal:
 @pytest.mark.parametrize("text", ["M3 S1", "G90 G17", "G4 P1", "T1 M6", "G28", "G40 G49 G80", "F100"])
 def test_a_block_without_axis_words_needs_no_units(text: str) -> None:
     assert command_of(text, ModalState()).kind in (Kind.NONE, Kind.HOME)
+
+
+def test_a_blank_inside_a_g_word_is_not_taken_for_two_words() -> None:
+    """``G0 3`` is G3, whatever other blocks have been read before (NISTIR 6556, 3.3.1: blanks mean nothing)."""
+    with pytest.raises(Refusal):
+        read_block(Block(1, "G0 G3 X1 I1", ""), ModalState(units="G21"))
+    assert read_block(Block(2, "G0 3 X1 I1", ""), ModalState(units="G21")).kind is Kind.ARC

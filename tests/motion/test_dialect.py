@@ -156,6 +156,30 @@ def test_codes_are_known_however_they_are_spelled(number: str, word: str) -> Non
     assert code_word("G", number) == word
 
 
+@pytest.mark.parametrize(
+    ("spread", "apart"),
+    [(("9 1",), ("9", "1")), (("0 3",), ("0", "3")), (("5 4",), ("5", "4")), (("2 8", "9 1"), ("2 8", "9", "1"))],
+)
+@pytest.mark.parametrize("spread_first", [True, False])
+def test_a_blank_inside_a_code_is_not_the_gap_between_two(
+    spread: tuple[str, ...], apart: tuple[str, ...], spread_first: bool
+) -> None:
+    """NISTIR 6556 3.3: ``G9 1`` is G91, ``G9 G1`` is an exact stop and a feed, whichever is read first."""
+    _forget()
+    words = {}
+    for numbers in (spread, apart) if spread_first else (apart, spread):
+        words[numbers] = g_words(numbers)
+    _forget()
+    assert words[spread] == g_words(tuple("".join(number.split()) for number in spread))
+    assert words[spread] != words[apart]
+
+
+def _forget() -> None:
+    """Fill the bounded memory of sorted words with others, so that what was read before is gone."""
+    for k in range(5000):
+        g_words((f"4.{k}",))
+
+
 # ---- refusals --------------------------------------------------------------------------------------------------------
 
 
