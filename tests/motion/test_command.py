@@ -5,8 +5,9 @@ from __future__ import annotations
 import pytest
 
 from gcodetool.errors import Refusal
-from gcodetool.motion.command import Kind, turns_of
+from gcodetool.motion.command import Kind, read_block, turns_of
 from gcodetool.motion.modal import ModalState
+from gcodetool.program.blocks import Block
 from tests.motion.driving import command_of, refusal_of
 
 FEEDING = ModalState(motion="G1", units="G21")
