@@ -120,11 +120,19 @@ def _ripple_places(blocks: Iterable[Block], machine: Machine, setup: Setup) -> E
         here: frozenset[int] = frozenset()
         if isinstance(item, Move):
             passed = frozenset(ORDER.index(r.axis) for r in every if r not in counted)
-            here = passing.behind(item) | passed | _near_rapid(item, anchor, amount)
+            here = passing.behind(item) | passed | _near_rapid(item, anchor, amount) | _near_quadrant(item, amount)
             if here or before:
                 lines[item.line] = lines.get(item.line, frozenset()) | here | before
         before = here
     return Ease(tuple(float(stated.get(letter, 0)) for letter in ORDER), lines)
+
+
+def _near_quadrant(move: Move, amount: Mapping[int, int]) -> frozenset[int]:
+    """Plane axes that an arc turns within their ripple of its start: the take-up may be made at the start instead."""
+    if move.arc is None:
+        return frozenset()
+    turns = [(move.axes[which], move.arc.point(share)[which] * QUANTA_PER_MM) for share, which in move.arc.quadrants()]
+    return frozenset(k for k, place in turns if k in amount and abs(place - move.start[k]) <= amount[k])
 
 
 def _near_rapid(move: Move, anchor: dict[int, int], amount: Mapping[int, int]) -> frozenset[int]:

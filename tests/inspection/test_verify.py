@@ -256,6 +256,15 @@ def test_the_ripple_is_allowed_where_it_is_set() -> None:
     assert not verdict(program, passed, {"x": "0.1"}).holds
 
 
+def test_the_ripple_is_allowed_where_an_arc_begins_just_before_its_quadrant_point() -> None:
+    """X turns 0.0056 after the start, within the ripple: the take-up is made at the start and the arc is not cut."""
+    program = "G21 G90\nG0 X-90.026 Y-360.665\nG1 X-91.523 Y-352.835 F100\nG2 X-91.241 Y-352.46 I0.311 J0.059\n"
+    lash, ripple = {"x": "0.12"}, {"x": "0.01"}
+    result = compensate(program, lash, ripple=ripple)
+    assert judged(program, result, lash, tolerance=0.0106).ok(0.0106)
+    assert verdict(program, result, lash, ripple=ripple).holds
+
+
 # ---- the command -----------------------------------------------------------------------------------------------------
 
 
